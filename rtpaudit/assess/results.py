@@ -1,0 +1,164 @@
+"""What assess hands on: figures of streams and calls under the names of the columns that people read."""
+
+from dataclasses import dataclass, field, fields
+
+import numpy as np
+from numpy.typing import NDArray
+
+from rtpaudit.capture.frames import Damage
+from rtpaudit.media.streams import Stream
+
+NAN = float("nan")
+
+
+@dataclass(slots=True)
+class StreamFigures:
+    """Figures of one stream. Each field is a column of the streams table; NaN or "" where there is no value."""
+
+    segments: int = 1
+    packets_captured: int = 0
+    packets_received: int = 0
+    packets_expected: int = 0
+    packets_lost: int = 0
+    loss_pct: float = NAN
+    packets_duplicated: int = 0
+    packets_reordered: int = 0
+    packets_recovered: int = 0
+    sequence_gaps: int = 0
+    longest_gap_packets: int = 0
+    jitter_ms: float = NAN
+    jitter_max_ms: float = NAN
+    jitter_last_ms: float = NAN
+    pdv_p50_ms: float = NAN
+    pdv_p95_ms: float = NAN
+    pdv_p99_ms: float = NAN
+    pdv_max_ms: float = NAN
+    clock_skew_ppm: float = NAN
+    dscp: int = 0
+    playout_delay_ms: float = NAN
+    packets_discarded: int | None = None
+    discard_pct: float = NAN
+    burst_ratio: float = NAN
+    burst_density_pct: float = NAN
+    burst_duration_ms: float = NAN
+    gap_density_pct: float = NAN
+    gap_duration_ms: float = NAN
+    reported_loss_pct: float = NAN
+    reported_jitter_ms: float = NAN
+    round_trip_ms: float = NAN
+    loss_before_pct: float = NAN
+    loss_after_pct: float = NAN
+    one_way_delay_ms: float = NAN
+    delay_basis: str = ""
+    ie_eff: float = NAN
+    r_factor: float = NAN
+    mos_cqe: float = NAN
+    r_factor_low: float = NAN
+    r_factor_high: float = NAN
+    rating_note: str = ""
+    quality_band: str = ""
+    speech_level_dbov: float = NAN
+    activity_pct: float = NAN
+    noise_level_dbov: float = NAN
+    clipped_pct: float = NAN
+
+
+@dataclass(slots=True)
+class GapColumns:
+    """Runs of missing sequence numbers of one stream, in order of the stream. Shape (gaps,)."""
+
+    first_missing: NDArray[np.int64]
+    packets_missing: NDArray[np.int64]
+    at_ns: NDArray[np.int64]
+    duration_ms: NDArray[np.float64]
+    after_s: NDArray[np.float64]
+
+
+@dataclass(slots=True)
+class WindowColumns:
+    """The 2-second windows of one stream. Shape (windows,)."""
+
+    from_s: NDArray[np.float64]
+    packets_expected: NDArray[np.int64]
+    packets_lost: NDArray[np.int64]
+    packets_discarded: NDArray[np.int64] | None
+    loss_pct: NDArray[np.float64]
+    jitter_ms: NDArray[np.float64]
+    pdv_p95_ms: NDArray[np.float64]
+    r_factor: NDArray[np.float64]
+    activity_pct: NDArray[np.float64]
+    level_dbov: NDArray[np.float64]
+
+
+@dataclass(slots=True)
+class AssessedStream:
+    """A stream at the end of its way along the benches."""
+
+    id: str
+    call: str
+    """id of its call, "" where it makes none (video)"""
+    stream: Stream
+    started_ns: int
+    ended_ns: int
+    figures: StreamFigures
+    gaps: GapColumns
+    windows: WindowColumns
+
+
+@dataclass(slots=True)
+class CallFigures:
+    """Figures of one call. Each field is a column of the calls table; NaN or "" where there is no value."""
+
+    caller_hears_r: float = NAN
+    callee_hears_r: float = NAN
+    r_factor: float = NAN
+    mos_cqe: float = NAN
+    quality_band: str = ""
+    loss_pct: float = NAN
+    jitter_ms: float = NAN
+    one_way_delay_ms: float = NAN
+
+
+@dataclass(slots=True)
+class AssessedCall:
+    """A call leg with its streams."""
+
+    id: str
+    conversation: str
+    capture: str
+    call_id: str
+    caller: str
+    callee: str
+    started_ns: int
+    answered_ns: int | None
+    ended_ns: int
+    duration_s: float
+    outcome: str
+    status_code: int | None
+    setup_delay_s: float
+    release_by: str
+    encoding: str
+    from_caller: list[AssessedStream]
+    """what the caller said, so what the callee hears"""
+    from_callee: list[AssessedStream]
+    figures: CallFigures
+    headline: str = ""
+
+    @property
+    def streams(self) -> list[AssessedStream]:
+        """Both directions, in id order."""
+        return sorted(self.from_caller + self.from_callee, key=lambda one: int(one.id[1:]))
+
+
+@dataclass(slots=True)
+class Assessment:
+    """All that one audit found out, before findings."""
+
+    captures: list[str]
+    streams: list[AssessedStream] = field(default_factory=list)
+    calls: list[AssessedCall] = field(default_factory=list)
+    damage: list[Damage] = field(default_factory=list)
+
+
+STREAM_FIGURES = tuple(one.name for one in fields(StreamFigures))
+CALL_FIGURES = tuple(one.name for one in fields(CallFigures))

@@ -1,0 +1,37 @@
+"""Compiled loops: one decorator, so that every kernel is cached between runs and frees the interpreter lock.
+
+Importing this module imports numba; only modules that hold kernels do so.
+"""
+
+from collections.abc import Callable
+from typing import Any, TypeVar, cast
+
+from numba import njit
+from numba.core import event
+
+F = TypeVar("F", bound=Callable[..., Any])
+
+
+def kernel(function: F) -> F:
+    """Compile a plain loop over arrays on its first call; later runs load it from the cache."""
+    try:
+        return cast(F, njit(cache=True, nogil=True, error_model="numpy")(function))
+    except RuntimeError:
+        # numba found no writable place for its cache (a read-only installation without a home): compile each run.
+        return cast(F, njit(nogil=True, error_model="numpy")(function))
+
+
+def on_first_compilation(announce: Callable[[], None]) -> None:
+    """Call ``announce`` once, when the first kernel has to be compiled because the cache does not hold it."""
+    said: list[bool] = []
+
+    class Listener(event.Listener):
+        def on_start(self, _event: Any) -> None:
+            if not said:
+                said.append(True)
+                announce()
+
+        def on_end(self, _event: Any) -> None:
+            return
+
+    event.register("numba:compile", Listener())  # type: ignore[no-untyped-call]

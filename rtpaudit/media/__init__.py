@@ -1,0 +1,1 @@
+"""Media: packets come in, streams and calls go out."""
