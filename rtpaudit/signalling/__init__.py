@@ -1,0 +1,1 @@
+"""The signalling room: what endpoints said about their calls."""
