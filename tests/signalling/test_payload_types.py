@@ -60,11 +60,14 @@ def test_the_clock_may_be_left_out_where_the_format_fixes_it() -> None:
     assert parse_given("98=AMR-WB") == (98, Encoding("AMR-WB", 16000, 16000))
 
 
-NONSENSE = """96|96=|=G722/8000|x=G722/8000|128=PCMU/8000|-1=PCMU/8000|72=PCMU/8000|96=PCMU/0|96=PCMU|96=G722/16000
-|96=opus/8000|96=PCMU/8000/0|96=PCMU/8000/1/1|96=PC MU/8000|\u0663=PCMU/8000""".split("|")
+NONSENSE = [
+    *("", "96", "96=", "=G722/8000", "x=G722/8000", "96=PC MU/8000", "\u0663=PCMU/8000"),
+    *("128=PCMU/8000", "-1=PCMU/8000", "72=PCMU/8000"),
+    *("96=PCMU", "96=PCMU/0", "96=G722/16000", "96=opus/8000", "96=PCMU/8000/0", "96=PCMU/8000/1/1"),
+]
 
 
-@pytest.mark.parametrize("text", ["", *NONSENSE])
+@pytest.mark.parametrize("text", NONSENSE)
 def test_nonsense_is_refused_with_a_sentence_that_names_it(text: str) -> None:
     with pytest.raises(UnusableArguments, match="payload type"):
         parse_given(text)
