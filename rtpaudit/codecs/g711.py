@@ -85,7 +85,8 @@ def _pcmu_octets() -> Octets:
     biased = np.minimum(np.abs(sample) >> 2, PCMU_OVERLOAD) + PCMU_BIAS
     segment = np.floor(np.log2(biased)).astype(np.int64) - 5
     code = segment << 4 | (biased >> (segment + 1)) & 15
-    return (~np.where(sample < 0, code | POLARITY, code) & 0xFF).astype(np.uint8)
+    signed = np.where(sample < 0, code | POLARITY, code)
+    return np.asarray(~signed & 0xFF, np.uint8)
 
 
 @cache
@@ -94,4 +95,5 @@ def _pcma_octets() -> Octets:
     magnitude = np.minimum(np.abs(sample), 32767) >> 4
     segment = np.maximum(np.floor(np.log2(np.maximum(magnitude, 1))).astype(np.int64) - 3, 0)
     code = segment << 4 | (magnitude >> np.maximum(segment - 1, 0)) & 15
-    return (np.where(sample < 0, code, code | POLARITY) ^ 0x55).astype(np.uint8)
+    signed = np.where(sample < 0, code, code | POLARITY)
+    return np.asarray(signed ^ 0x55, np.uint8)
