@@ -1,10 +1,13 @@
 """A stream: one SSRC one way between two address-and-port pairs, its packets as columns."""
 
+from collections.abc import Mapping
 from dataclasses import dataclass, field
 from enum import IntEnum
 
 import numpy as np
 from numpy.typing import NDArray
+
+from rtpaudit.signalling.payload_types import Encoding
 
 
 class Content(IntEnum):
@@ -81,5 +84,5 @@ class Stream:
     """``audio``, ``video`` or ``unknown``"""
     encrypted: bool = False
     match_basis: str = ""
-    encodings: dict[int, str] = field(default_factory=dict)
+    encodings: Mapping[int, Encoding] = field(default_factory=dict)
     """encoding of every payload type that occurs"""
