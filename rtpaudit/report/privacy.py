@@ -1,0 +1,126 @@
+"""What ``--private`` leaves out: parties, addresses, dialogs and file names become pseudonyms, digits go.
+
+Pseudonyms are keyed: within one run the same party has the same one in all tables, and without the key, which is kept
+nowhere, neither a list of all telephone numbers nor another run's report leads back to it.
+"""
+
+from __future__ import annotations
+
+import base64
+import hmac
+import re
+import secrets
+from collections.abc import Callable, Mapping, Sequence
+from ipaddress import ip_address
+from typing import TYPE_CHECKING
+
+if TYPE_CHECKING:
+    from pandas import DataFrame, Series
+
+# Text columns that may tell who spoke with whom; all others hold only words of ours. "words" are sentences that may
+# name one of the others, and what is "dropped" cannot be made harmless.
+TREATMENT: dict[str, dict[str, str]] = {
+    "calls": {"capture": "file", "call_id": "dialog", "caller": "party", "callee": "party"},
+    "streams": {"capture": "file", "source": "party", "destination": "party"},
+    "findings": {"says": "words", "check_next": "words"},
+    "signalling": {
+        "from": "words",
+        "to": "words",
+        "message": "words",
+        "line": "dropped",
+        "call_id": "dialog",
+        "capture": "file",
+    },
+    "events": {"digit": "dropped"},
+    "reports": {"reporter": "party", "set_aside": "words"},
+    "damage": {"capture": "file", "what": "words", "lost": "words"},
+}
+
+# Candidates only: what is no address to the standard library (a time of day, a version) stays as it is.
+_ADDRESS = re.compile(
+    r"(?<![\w.])\d{1,3}(?:\.\d{1,3}){3}(?!\w|\.\d)|(?<![\w:])[0-9A-Fa-f]*(?::[0-9A-Fa-f.]*){2,}[0-9A-Fa-f]"
+)
+_WORD = re.compile(r"[\w+][\w+.@-]*\w")
+# A short number within a sentence is rather a figure than an extension.
+_SHORTEST_NUMBER = 6
+
+
+def new_key() -> bytes:
+    """A key that nobody knows; it is forgotten with the run."""
+    return secrets.token_bytes(32)
+
+
+class Pseudonyms:
+    """Names that stand for others for as long as this object lives."""
+
+    def __init__(self, key: bytes, captures: Sequence[str]) -> None:
+        self._key = key
+        self._files: dict[str, str] = {}
+        self._known: dict[str, str] = {}
+        for name in captures:
+            self.file(name)
+
+    def tables(self, tables: Mapping[str, DataFrame]) -> dict[str, DataFrame]:
+        """The tables with nothing in them that tells who spoke."""
+        treated = {"file": self.file, "dialog": self.dialog, "party": self.party, "words": self.words}
+        hidden = {name: frame.copy(deep=False) for name, frame in tables.items()}
+        # Sentences last: what they may name has to be known by then.
+        for kind in ("file", "dialog", "party", "words"):
+            for table, columns in TREATMENT.items():
+                for column in [name for name, treatment in columns.items() if treatment == kind]:
+                    hidden[table][column] = _replaced(hidden[table][column], treated[kind])
+        for table, columns in TREATMENT.items():
+            for column in [name for name, treatment in columns.items() if treatment == "dropped"]:
+                hidden[table][column] = hidden[table][column].mask(hidden[table][column].notna())
+        return hidden
+
+    def party(self, name: str) -> str:
+        """Pseudonym of a number, name or address, the same for every way of writing an address."""
+        try:
+            return self._keyed("host", str(ip_address(name)))
+        except ValueError:
+            return self._remembered("party", name)
+
+    def dialog(self, name: str) -> str:
+        """Pseudonym of a Call-ID, which often holds an address."""
+        return self._remembered("dialog", name)
+
+    def file(self, name: str) -> str:
+        """Number of a capture, as file names are often made of who complained."""
+        number = self._files.setdefault(name, f"capture-{len(self._files) + 1}")
+        return self._known.setdefault(name, number)
+
+    def words(self, text: str) -> str:
+        """A sentence in which addresses, and names met before, are replaced."""
+        for name in self._odd_names():
+            text = text.replace(name, self._known[name])
+        return _ADDRESS.sub(lambda found: self._address(found[0]), _WORD.sub(lambda found: self._word(found[0]), text))
+
+    def _odd_names(self) -> list[str]:
+        """Names with spaces or signs in them, which are more than one word of a sentence; the longest first."""
+        odd = [name for name in self._known if len(name) > 2 and not _WORD.fullmatch(name)]
+        return sorted(odd, key=len, reverse=True)
+
+    def _word(self, word: str) -> str:
+        if word.isdigit() and len(word) < _SHORTEST_NUMBER:
+            return word
+        return self._known.get(word) or "@".join(self._known.get(part, part) for part in word.split("@"))
+
+    def _address(self, text: str) -> str:
+        try:
+            return self._keyed("host", str(ip_address(text)))
+        except ValueError:
+            return text
+
+    def _remembered(self, kind: str, name: str) -> str:
+        return self._known.setdefault(name, self._keyed(kind, name))
+
+    def _keyed(self, kind: str, name: str) -> str:
+        digest = hmac.digest(self._key, name.encode("utf-8", "replace"), "sha256")
+        return f"{kind}-{base64.b32encode(digest)[:8].decode().lower()}"
+
+
+def _replaced(series: Series, change: Callable[[str], str]) -> Series:
+    """The column with each distinct text changed once."""
+    changed = {text: change(text) for text in series.dropna().unique()}
+    return series.map(changed).astype("string")
