@@ -172,10 +172,13 @@ STREAMS = (
     _number("ie_eff", "Effective equipment impairment: codec and loss together.", f"{_G107}, 7.5; ITU-T G.113, App. I"),
     _number(
         "r_factor",
-        "Conversational transmission rating, 0 to 100. Empty where G.113 has no narrowband values for the encoding.",
+        "Conversational transmission rating; it may fall below 0. Empty where G.113 has no narrowband values for the "
+        "encoding.",
         f"{_G107}, 7.1, with Ta = T and Tr = 2 T",
     ),
-    _number("mos_cqe", "Mean opinion score, conversational, estimated from the rating; 1 to 4.5.", f"{_G107}, Annex B"),
+    _number(
+        "mos_cqe", "Mean opinion score, conversational, estimated from the rating; 4.5 at best.", f"{_G107}, Annex B"
+    ),
     _number("r_factor_low", "The rating with 150 ms of network delay where the delay is assumed.", f"{_G107}, 7.1"),
     _number("r_factor_high", "The rating with 5 ms of network delay where the delay is assumed.", f"{_G107}, 7.1"),
     _text(

@@ -17,6 +17,8 @@ DRAWN = "floor < benches < " + " < ".join(ROOMS)
 # Packages that take long to load: only inside the functions that need them, but for rooms off the way of triage.
 HEAVY = {"pandas", "pyarrow", "scapy", "scipy", "soundfile", "rich", "bokeh", "jinja2", "dask", "distributed", "fsspec"}
 MAY_BE_HEAVY = {"listen", "nightly"}
+# The decorator of all kernels, and the one thing that numba's arrays do too slowly: big-endian reads from memory.
+MAY_USE_NUMBA = {f"{PACKAGE}.kernels", f"{PACKAGE}.decode.octets"}
 
 
 def complaint_about(found: Import) -> str:
@@ -45,7 +47,7 @@ def complaint_about(found: Import) -> str:
 
 
 def complaint_about_library(found: Import, top: str, where: str) -> str:
-    if top == "numba" and found.source.module != f"{PACKAGE}.kernels":
+    if top in ("numba", "llvmlite") and found.source.module not in MAY_USE_NUMBA:
         return f"{where}: import the decorator from {PACKAGE}.kernels instead"
     if top == "pandas" and ORDER.get(found.source.room, 0) < ORDER["report"] and found.source.room in ORDER:
         return f"{where}, but pandas appears first in report: keep to arrays here"
