@@ -50,7 +50,7 @@ class Frames:
     original: NDArray[np.int32]
     """octets that the frame had on the wire; never below ``captured``"""
     time_ns: NDArray[np.int64]
-    """arrival, ns since 1970-01-01 UTC; 0 where the block carries none (simple packet block)"""
+    """arrival, ns since 1970-01-01 UTC; a simple packet block carries none and has that of the frame before"""
     interface: NDArray[np.uint16]
     """index into ``interfaces``"""
     interfaces: tuple[Interface, ...]

@@ -1,0 +1,172 @@
+"""pcapng: sections of blocks, each section with its own byte order and interfaces."""
+
+import struct
+from collections.abc import Iterator
+
+import numpy as np
+
+from rtpaudit.capture import pcapng_blocks as blocks
+from rtpaudit.capture.columns import FrameColumns
+from rtpaudit.capture.damage import DamageLog, octets_text
+from rtpaudit.capture.frames import Frames, Interface, Octets
+from rtpaudit.capture.pcapng_options import NO_LIMIT, describe, statistics
+
+SECTION_HEADER_LENGTH = 28
+MOST_INTERFACES = 1 << 16
+"""Over all sections: what the column of interfaces can number."""
+MOST_RARE_BLOCKS = 1_000_000
+"""Section headers, interface descriptions and statistics are read one by one: a file of nothing else has to end."""
+MOST_OPTION_OCTETS = 1 << 16
+
+
+class PcapngReader:
+    """One pass over a pcapng file."""
+
+    def __init__(self, octets: Octets, damage: DamageLog) -> None:
+        self.octets = octets
+        self.damage = damage
+        self.position = 0
+        self.interfaces: list[Interface] = []
+        self._big = False
+        self._first = 0
+        self._trusted = -1
+        self._rare_blocks = 0
+        self._table = np.zeros((16, 5), np.int64)
+        self._stated: set[int] = set()
+        self._state = np.zeros(7, np.int64)
+        self._state[blocks.LAST_TIME] = blocks.UNKNOWN_TIME
+
+    def batches(self, size: int) -> Iterator[Frames]:
+        """Frames in file order, at most ``size`` at a time. A simple packet block has the time of the frame before."""
+        first_number = 1
+        while self.position < len(self.octets):
+            columns = FrameColumns(min(size, (len(self.octets) - self.position) // 16 + 1))
+            self._fill(columns)
+            self._settle(columns)
+            if columns.rows:
+                yield columns.frames(self.octets, self.interfaces, first_number)
+            first_number += columns.rows
+        self._report_counts()
+
+    def _fill(self, columns: FrameColumns) -> None:
+        while True:
+            rows, self.position, stopped = blocks.index_blocks(
+                self.octets, self.position, self._big, self._trusted,
+                self._first, len(self.interfaces) - self._first, self._table, self._state, *columns.free(),
+            )  # fmt: skip
+            columns.rows += rows
+            if stopped in (blocks.COMPLETE, blocks.FULL):
+                return
+            if stopped == blocks.BROKEN or not self._read_rare():
+                self._mend()
+
+    def _settle(self, columns: FrameColumns) -> None:
+        """Give untimed frames at the head of a file the first time, and interfaces the drops noted in frames."""
+        times = columns.time_ns[: columns.rows]
+        if columns.rows and times[0] == blocks.UNKNOWN_TIME:
+            known = np.flatnonzero(times != blocks.UNKNOWN_TIME)
+            times[: known[0] if len(known) else None] = times[known[0]] if len(known) else 0
+        for row in np.flatnonzero(self._table[: len(self.interfaces), blocks.DROPPED]):
+            if int(row) not in self._stated:
+                self.interfaces[row].dropped = int(self._table[row, blocks.DROPPED])
+
+    def _read_rare(self) -> bool:
+        """Read the block at the position and pass it; False where it is damaged."""
+        self._rare_blocks += 1
+        if self._rare_blocks > MOST_RARE_BLOCKS:
+            return self._give_up(f"more than {MOST_RARE_BLOCKS:,} blocks that describe sections and interfaces")
+        kind, total = struct.unpack(self._order("II"), self.octets[self.position : self.position + 8].tobytes())
+        if kind == blocks.SECTION_HEADER:
+            return self._read_section()
+        end = min(self.position + total, len(self.octets))
+        body = self.octets[self.position + 8 : min(end - 4, self.position + MOST_OPTION_OCTETS)].tobytes()
+        if kind == blocks.STATISTICS:
+            self._read_statistics(body)
+        elif len(self.interfaces) == MOST_INTERFACES:
+            return self._give_up(f"more than {MOST_INTERFACES:,} interfaces")
+        else:
+            self._read_interface(body)
+        self.position = end
+        return True
+
+    def _order(self, fields: str) -> str:
+        return (">" if self._big else "<") + fields
+
+    def _read_section(self) -> bool:
+        head = self.octets[self.position : self.position + SECTION_HEADER_LENGTH].tobytes()
+        if len(head) < SECTION_HEADER_LENGTH:
+            return False
+        orders = [
+            big for big in (False, True) if head[8:12] == blocks.BYTE_ORDER.to_bytes(4, "big" if big else "little")
+        ]
+        if not orders:
+            return False
+        self._big, self._first = orders[0], len(self.interfaces)
+        total, _, major, minor = struct.unpack_from(self._order("IIHH"), head, 4)
+        end = self.position + total
+        sound = total >= SECTION_HEADER_LENGTH and blocks.block_end(self.octets, self.position, self._big) == end
+        if self.position != self._trusted and not (sound and end <= len(self.octets)):
+            return False
+        if major != 1:
+            self.damage.add(self.position, f"a section of the unknown version {major}.{minor}", "nothing, if 1.0 fits")
+        self.position = min(end, len(self.octets))
+        return True
+
+    def _read_interface(self, body: bytes) -> None:
+        if len(body) < 8:
+            self.damage.add(self.position, "an interface description that is too short", "the frames of this interface")
+        interface, unit = describe(body, self._big)
+        if len(self.interfaces) == len(self._table):
+            self._table = np.concatenate([self._table, np.zeros_like(self._table)])
+        self._table[len(self.interfaces)] = [*unit, interface.snap_length or NO_LIMIT, 0]
+        self.interfaces.append(interface)
+
+    def _read_statistics(self, body: bytes) -> None:
+        which, received, dropped = statistics(body, self._big)
+        row = self._first + which
+        if not self._first <= row < len(self.interfaces):
+            return
+        # Statistics count from the start of the capture: the last ones hold, and go before the frames' own counts.
+        if received is not None:
+            self.interfaces[row].received = received
+        if dropped is not None:
+            self.interfaces[row].dropped = dropped
+            self._stated.add(row)
+
+    def _mend(self) -> None:
+        """Read a block with one wrong length all the same, else go on at the next block that is whole."""
+        broken, size = self.position, len(self.octets)
+        if broken == size:
+            return
+        total = struct.unpack(self._order("I"), self.octets[broken + 4 : broken + 8].tobytes().ljust(4, b"\0"))[0]
+        end = broken + total
+        if (
+            broken != self._trusted
+            and total >= 12
+            and (end == size or (end < size and blocks.block_end(self.octets, end, self._big) >= 0))
+        ):
+            self.damage.add(broken, "a block whose two lengths disagree", "nothing")
+            self._trusted = broken
+            return
+        found = blocks.find_block(self.octets, broken + 1, self._big)
+        if found < 0 and end > size and broken != self._trusted and size - broken >= SECTION_HEADER_LENGTH:
+            self.damage.add(broken, f"the file ends within a block of {octets_text(total)}", octets_text(end - size))
+            self._trusted = broken
+            return
+        self.position = size if found < 0 else found
+        what = "the file ends within a block" if found < 0 and end > size else "octets that are no block"
+        self.damage.add(broken, what, octets_text(self.position - broken))
+
+    def _give_up(self, what: str) -> bool:
+        self.damage.add(self.position, what, octets_text(len(self.octets) - self.position))
+        self.position = len(self.octets)
+        return True
+
+    def _report_counts(self) -> None:
+        for count, what, lost in (
+            (blocks.CLIPPED, "packet blocks too small for the frame that they announce", "the ends of these frames"),
+            (blocks.HOMELESS, "packet blocks of an interface that is not described", "these frames"),
+            (blocks.UNTIMED, "packet blocks without a time stamp", "their times: each has that of the frame before"),
+        ):
+            if self._state[count]:
+                self.damage.add(int(self._state[count + 1]), f"{int(self._state[count]):,} {what}", lost)
