@@ -17,6 +17,9 @@ from rtpaudit.assess.results import (
 from rtpaudit.capture.frames import Damage
 from rtpaudit.columns import TABLES
 from rtpaudit.media.streams import Stream, StreamPackets
+from rtpaudit.profile import Profile
+from rtpaudit.report.tables import build_tables
+from rtpaudit.report.wav import Sound
 
 BEGIN_NS = 1_700_000_000_000_000_000
 """2023-11-14T22:13:20Z"""
@@ -158,3 +161,30 @@ def row(table: str, **cells: Any) -> SimpleNamespace:
         "from": "from_"
     }
     return SimpleNamespace(**{names[one.name]: empty[one.kind] for one in TABLES[table]} | cells)
+
+
+class Tones:
+    """A source in which every stream holds its own number, over and over."""
+
+    def __init__(self, without_decoder: tuple[str, ...] = ()) -> None:
+        self.without_decoder = without_decoder
+
+    def why_silent(self, stream_id: str) -> str:
+        return "no decoder for opus" if stream_id in self.without_decoder else ""
+
+    def sent(self, stream_id: str) -> Sound:
+        assert stream_id not in self.without_decoder
+        return np.full(80, int(stream_id[1:]), np.int16), 8000
+
+    def both(self, call: AssessedCall) -> Sound:
+        return np.tile(np.array([[1, 2]], np.int16), (80, 1)), 8000
+
+
+class Audited:
+    """What a walk hands to the report, made of the assessment above or another."""
+
+    def __init__(self, found: Assessment | None = None) -> None:
+        self.assessment = found or assessment()
+        self.tables = build_tables(self.assessment)
+        self.profile = Profile()
+        self.sound = Tones()

@@ -10,20 +10,9 @@ import pytest
 
 from rtpaudit.columns import TABLES
 from rtpaudit.errors import UnusableOutput
-from rtpaudit.profile import Profile
 from rtpaudit.report import folder
 from rtpaudit.report.folder import new_folder, refuse_foreign, write_folder
-from rtpaudit.report.tables import build_tables
-from tests.report import made
-from tests.report.test_wav import Tones
-
-
-class Audited:
-    def __init__(self) -> None:
-        self.assessment = made.assessment()
-        self.tables = build_tables(self.assessment)
-        self.profile = Profile()
-        self.sound = Tones()
+from tests.report.made import Audited
 
 
 def everything(place: Path) -> dict[str, bytes]:

@@ -6,30 +6,13 @@ import numpy as np
 import pytest
 import soundfile
 
-from rtpaudit.assess.results import AssessedCall
 from rtpaudit.errors import UnusableOutput
 from rtpaudit.report import wav
-from rtpaudit.report.wav import Sound, write_audio, write_wav
+from rtpaudit.report.wav import write_audio, write_wav
 from tests.report import made
+from tests.report.made import Tones
 
 RAMP = np.arange(-32768, 32768, 7, dtype=np.int16)
-
-
-class Tones:
-    """A source in which every stream holds its own number, over and over."""
-
-    def __init__(self, without_decoder: tuple[str, ...] = ()) -> None:
-        self.without_decoder = without_decoder
-
-    def why_silent(self, stream_id: str) -> str:
-        return "no decoder for opus" if stream_id in self.without_decoder else ""
-
-    def sent(self, stream_id: str) -> Sound:
-        assert stream_id not in self.without_decoder
-        return np.full(80, int(stream_id[1:]), np.int16), 8000
-
-    def both(self, call: AssessedCall) -> Sound:
-        return np.tile(np.array([[1, 2]], np.int16), (80, 1)), 8000
 
 
 def test_every_sample_comes_back(tmp_path: Path) -> None:

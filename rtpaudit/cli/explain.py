@@ -1,0 +1,58 @@
+"""What a column means, how it is known and from where: the same words as in the report."""
+
+from collections.abc import Iterator
+from textwrap import fill
+from typing import Annotated
+
+import typer
+
+from rtpaudit.cli.terminal import bold, say, visible, width
+from rtpaudit.columns import TABLES, Column
+from rtpaudit.errors import UnusableArguments
+
+KINDS = {"text": "text", "count": "whole number", "number": "number", "time": "time", "yes_no": "yes or no"}
+
+Name = Annotated[str | None, typer.Argument(metavar="[NAME]", help="A column or a table; all where left out.")]
+
+
+def explain(name: Name = None) -> int:
+    """Say what a column means, how it is measured and where that is published."""
+    if name is None:
+        say("\n\n".join(map(_table, TABLES)))
+    elif name in TABLES:
+        say(_table(name))
+    else:
+        say("\n\n".join(_homes(name)))
+    return 0
+
+
+def _homes(name: str) -> Iterator[str]:
+    """The column in each table that has it."""
+    homes = [(table, one) for table, columns in TABLES.items() for one in columns if one.name == name]
+    if not homes:
+        raise UnusableArguments(f"nothing is called {visible(name)!r}; {_near(name)}`rtpaudit explain` lists all names")
+    for table, column in homes:
+        kind = f"{KINDS[column.kind]} [{column.unit}]" if column.unit else KINDS[column.kind]
+        paragraphs = [column.meaning, f"Source: {column.source}"]
+        yield "\n".join([bold(f"{column.name}") + f"  in {table}: {kind}", *map(_indented, paragraphs)])
+
+
+def _near(name: str) -> str:
+    from difflib import get_close_matches
+
+    known = {one.name for columns in TABLES.values() for one in columns} | set(TABLES)
+    near = get_close_matches(name, sorted(known), n=3)
+    return f"did you mean {', '.join(near)}? " if near else ""
+
+
+def _table(table: str) -> str:
+    return "\n".join([bold(f"{table}.csv, {table}.parquet"), *map(_row, TABLES[table])])
+
+
+def _row(column: Column) -> str:
+    name = f"  {column.name}  "
+    return fill(column.meaning, width(), initial_indent=f"{name:26}", subsequent_indent=" " * 26)
+
+
+def _indented(text: str) -> str:
+    return fill(text, width(), initial_indent="  ", subsequent_indent="  ")

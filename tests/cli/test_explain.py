@@ -1,0 +1,41 @@
+"""Explain: the same words as in the report, and help where the name is wrong."""
+
+from pathlib import Path
+
+import pytest
+
+from rtpaudit.cli import main
+from rtpaudit.columns import TABLES
+from tests.cli.conftest import Run
+
+
+def test_without_a_name_every_column_of_every_table_is_listed(capsys: pytest.CaptureFixture[str]) -> None:
+    assert main(["explain"]) == 0
+    text = capsys.readouterr().out
+    for table, columns in TABLES.items():
+        assert f"{table}.csv" in text
+        for column in columns:
+            assert f"  {column.name}  " in text
+
+
+def test_a_column_is_explained_with_unit_and_source_in_each_table_that_has_it(
+    capsys: pytest.CaptureFixture[str],
+) -> None:
+    assert main(["explain", "jitter_ms"]) == 0
+    text = capsys.readouterr().out
+    for table in ("calls", "streams", "windows", "reports"):
+        assert f"jitter_ms  in {table}: number [ms]" in text
+    assert "Source: RFC 3550, 6.4.1 and A.8" in text
+
+
+def test_a_table_is_explained_by_its_columns(capsys: pytest.CaptureFixture[str]) -> None:
+    assert main(["explain", "gaps"]) == 0
+    text = capsys.readouterr().out
+    assert "first_missing" in text
+    assert "jitter_ms" not in text
+
+
+def test_a_name_that_is_nearly_right_is_met_with_the_right_one(run: Run, tmp_path: Path) -> None:
+    result = run("explain", "jiter_ms")
+    assert result.status == 2
+    assert "did you mean jitter_ms" in result.err
