@@ -1,0 +1,90 @@
+"""Assess: streams and calls come in; their figures, rated and by window, go out."""
+
+from collections.abc import Sequence
+
+import numpy as np
+
+from rtpaudit.assess.call import assess_call
+from rtpaudit.assess.rating import Rated, rate, rate_windows
+from rtpaudit.assess.results import AssessedStream, Assessment, WindowColumns
+from rtpaudit.assess.stream import Measured, measure
+from rtpaudit.capture.frames import Damage
+from rtpaudit.media.calls import Call
+from rtpaudit.media.streams import Stream
+from rtpaudit.profile import Profile
+
+
+def assess(
+    streams: Sequence[Stream],
+    calls: Sequence[Call],
+    profile: Profile,
+    captures: Sequence[str] = (),
+    damage: Sequence[Damage] = (),
+) -> Assessment:
+    """Measure and rate every stream, then every call.
+
+    ``streams`` come in the order in which they are numbered, and so do ``calls``, which refer to them.
+    """
+    measured = [measure(stream) for stream in streams]
+    rated = rate(streams, [one.path(profile) for one in measured], profile)
+    _note_ratings(measured, rated, profile)
+    windows = _windows(measured, rated, profile)
+    assessed = [
+        AssessedStream(f"s{k:02d}", "", one.stream, one.started_ns, one.ended_ns, one.figures, one.gaps, windows[k - 1])
+        for k, one in enumerate(measured, 1)
+    ]
+    by_stream = {id(one.stream): one for one in assessed}
+    return Assessment(
+        captures=list(captures),
+        streams=assessed,
+        calls=[
+            assess_call(
+                k,
+                call,
+                [by_stream[id(stream)] for stream in call.from_caller],
+                [by_stream[id(stream)] for stream in call.from_callee],
+            )
+            for k, call in enumerate(calls, 1)
+        ],
+        damage=list(damage),
+    )
+
+
+def _note_ratings(measured: Sequence[Measured], rated: Rated, profile: Profile) -> None:
+    for k, one in enumerate(measured):
+        figures = one.figures
+        figures.one_way_delay_ms = float(rated.delay_ms[k])
+        figures.delay_basis = rated.delay_basis[k]
+        figures.ie_eff = float(rated.parts.Ie_eff[k])
+        figures.r_factor = float(rated.parts.R[k])
+        figures.mos_cqe = float(rated.mos[k])
+        figures.r_factor_low = float(rated.low[k])
+        figures.r_factor_high = float(rated.high[k])
+        figures.rating_note = rated.notes[k]
+        figures.quality_band = rated.bands[k]
+        figures.playout_delay_ms = profile.playout.nominal_ms
+
+
+def _windows(measured: Sequence[Measured], rated: Rated, profile: Profile) -> list[WindowColumns]:
+    """The windows of every stream, all rated in one go."""
+    found = [one.network.windows for one in measured]
+    counts = np.array([len(one.from_s) for one in found], np.int64)
+    loss = np.concatenate([np.empty(0), *(one.loss_pct for one in found)])
+    R = rate_windows(loss, np.repeat(np.arange(len(found)), counts), rated, profile)
+    edges = np.concatenate([[0], np.cumsum(counts)])
+    nothing = np.full(int(counts.max(initial=0)), np.nan)
+    return [
+        WindowColumns(
+            from_s=one.from_s,
+            packets_expected=one.packets_expected,
+            packets_lost=one.packets_lost,
+            packets_discarded=None,
+            loss_pct=one.loss_pct,
+            jitter_ms=one.jitter_ms,
+            pdv_p95_ms=one.pdv_p95_ms,
+            r_factor=R[edges[k] : edges[k + 1]],
+            activity_pct=nothing[: counts[k]],
+            level_dbov=nothing[: counts[k]],
+        )
+        for k, one in enumerate(found)
+    ]

@@ -1,0 +1,77 @@
+"""One stream at the benches: its network figures, and what the E-model asks of it."""
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from rtpaudit.assess.rating import Path
+from rtpaudit.assess.results import STREAM_FIGURES, GapColumns, StreamFigures
+from rtpaudit.media.streams import Content, Stream
+from rtpaudit.metrics.network import NetworkFigures, network_figures
+from rtpaudit.profile import Profile
+
+
+@dataclass(slots=True)
+class Measured:
+    """A stream with its figures before rating."""
+
+    stream: Stream
+    started_ns: int
+    ended_ns: int
+    network: NetworkFigures
+    figures: StreamFigures
+
+    @property
+    def gaps(self) -> GapColumns:
+        """Rows of the gaps table; the number as it stands in the header."""
+        found = self.network.gaps
+        return GapColumns(
+            found.first_missing & 0xFFFF, found.packets_missing, found.at_ns, found.duration_ms, found.after_s
+        )
+
+    def path(self, profile: Profile) -> Path:
+        """What the rating asks of this stream."""
+        given = profile.network.delay_ms
+        return Path(
+            loss_pct=self.figures.loss_pct,
+            burst_ratio=self.figures.burst_ratio,
+            network_ms=float("nan") if given is None else given,
+            network_basis="" if given is None else "given",
+            playout_ms=profile.playout.nominal_ms,
+        )
+
+
+_SHARED = tuple(name for name in STREAM_FIGURES if name in NetworkFigures.__dataclass_fields__)
+
+
+def measure(stream: Stream) -> Measured:
+    """The network figures of one stream."""
+    packets = stream.packets
+    started_ns, ended_ns = int(packets.time_ns.min()), int(packets.time_ns.max())
+    audio = (packets.content == Content.AUDIO) | (packets.content == Content.REDUNDANT)
+    network = network_figures(
+        packets.time_ns,
+        packets.extended,
+        packets.segment,
+        packets.duplicate,
+        packets.media_ticks,
+        audio,
+        clock_rates(stream),
+        stream.packet_time_ms,
+        started_ns,
+    )
+    figures = StreamFigures(**{name: getattr(network, name) for name in _SHARED})
+    figures.dscp = int(np.bincount(packets.dscp).argmax())
+    return Measured(stream, started_ns, ended_ns, network, figures)
+
+
+def clock_rates(stream: Stream) -> NDArray[np.int32] | int:
+    """Clock rate of every packet, one number where all payload types share it. [Hz]"""
+    rates = {encoding.clock_rate_hz for encoding in stream.encodings.values()}
+    if len(rates) <= 1:
+        return stream.clock_rate_hz
+    table = np.zeros(128, np.int32)
+    for number, encoding in stream.encodings.items():
+        table[number] = encoding.clock_rate_hz
+    return np.asarray(table[stream.packets.payload_type], np.int32)

@@ -1,0 +1,175 @@
+"""The walk: captures come in at one end, an ``Audit`` goes out at the other, room after room."""
+
+from collections.abc import Callable, Mapping, Sequence
+from dataclasses import dataclass, replace
+from functools import cached_property
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from rtpaudit.assess import assess
+from rtpaudit.assess.results import Assessment
+from rtpaudit.assess.sound import SoundSource
+from rtpaudit.capture import open_recordings
+from rtpaudit.capture.frames import Damage, Octets
+from rtpaudit.decode import Decoder
+from rtpaudit.errors import UnusableArguments
+from rtpaudit.media.calls import pair_streams
+from rtpaudit.media.find import find_streams
+from rtpaudit.media.rtp import RtpCollector
+from rtpaudit.media.streams import Stream
+from rtpaudit.profile import Profile
+from rtpaudit.signalling.payload_types import Encoding
+
+if TYPE_CHECKING:
+    from pandas import DataFrame
+
+    from rtpaudit.capture import Recording
+    from rtpaudit.report.wav import AudioSource
+
+Progress = Callable[[int, int], None]
+"""Called with the octets read so far and those there are to read."""
+
+
+@dataclass(slots=True)
+class Heard:
+    """What one recording brought."""
+
+    streams: list[Stream]
+    buffers: list[Octets]
+    damage: list[Damage]
+
+
+class Audit:
+    """All that is known of one or several captures, as tables and as sound."""
+
+    def __init__(self, assessment: Assessment, sound: SoundSource, profile: Profile) -> None:
+        self.assessment = assessment
+        self.profile = profile
+        self.sound: AudioSource = sound
+
+    @cached_property
+    def tables(self) -> Mapping[str, "DataFrame"]:
+        """Every table by name."""
+        from rtpaudit.report.tables import build_tables
+
+        return build_tables(self.assessment)
+
+    def __getattr__(self, name: str) -> Any:
+        # Tables are attributes: audit.calls, audit.streams and so on, by the list of columns.py.
+        from rtpaudit.columns import TABLES
+
+        if name in TABLES:
+            return self.tables[name]
+        raise AttributeError(f"an audit has no {name!r}; its tables are {', '.join(TABLES)}")
+
+    def samples(self, stream: str, heard: bool = False) -> NDArray[np.int16]:
+        """What the payloads of a stream say, on its RTP timeline.
+
+        Raises
+        ------
+        MissingCodec
+            If the encoding has no decoder, or the payload is encrypted.
+        UnusableArguments
+            If there is no such stream.
+        """
+        if stream not in {one.id for one in self.assessment.streams}:
+            raise UnusableArguments(f"there is no stream {stream!r}")
+        return self.sound.sent(stream)[0]
+
+    def write(self, folder: str | Path, *, audio: bool = True, private: bool = False) -> None:
+        """Write the report folder; UnusableOutput where it cannot be, or is not ours to replace."""
+        from rtpaudit.report.folder import write_folder
+
+        write_folder(self, Path(folder), audio=audio, private=private)
+
+
+def audit(
+    *paths: str | Path,
+    profile: Profile | None = None,
+    payload_types: Mapping[int, Encoding] | None = None,
+    delay_ms: float | None = None,
+    progress: Progress | None = None,
+) -> Audit:
+    """Audit one capture or several.
+
+    Parameters
+    ----------
+    *paths : str or Path
+        Captures; "-" is standard input. Files given together that continue each other are one recording.
+    profile : Profile, optional
+        Playout, planning values and limits; the defaults where left out.
+    payload_types : mapping, optional
+        Encoding by payload type, where no signalling tells.
+    delay_ms : float, optional
+        Known one-way delay of the network. [ms]
+    progress : callable, optional
+        Told how far reading has come.
+
+    Raises
+    ------
+    UnreadableCapture
+        If nothing at all can be read.
+    """
+    if not paths:
+        raise UnusableArguments("no capture was given")
+    chosen = profile or Profile()
+    if delay_ms is not None:
+        chosen = replace(chosen, network=replace(chosen.network, delay_ms=delay_ms))
+    recordings = open_recordings(paths)
+    total = sum(len(file.octets) for recording in recordings for file in recording.files)
+    heard: list[Heard] = []
+    for number, recording in enumerate(recordings):
+        done = sum(len(file.octets) for earlier in recordings[:number] for file in earlier.files)
+        heard.append(_listen_to(recording, number, payload_types or {}, _from(progress, done, total)))
+    streams = [stream for one in heard for stream in one.streams]
+    streams.sort(key=lambda stream: int(stream.packets.time_ns[0]))
+    damage = [row for one in heard for row in one.damage]
+    names = [file.name for recording in recordings for file in recording.files]
+    buffers = [one.buffers for one in heard]
+    assessment = assess(streams, pair_streams(streams), chosen, names, damage)
+    return Audit(assessment, SoundSource(buffers, assessment.streams), chosen)
+
+
+def _from(progress: Progress | None, done: int, total: int) -> Callable[[int], None]:
+    def tell(octets: int) -> None:
+        if progress:
+            progress(done + octets, total)
+
+    return tell
+
+
+def _listen_to(
+    recording: "Recording", number: int, given: Mapping[int, Encoding], progress: Callable[[int], None]
+) -> Heard:
+    """Walk one recording from its frames to its streams."""
+    decoder, collector = Decoder(), RtpCollector()
+    buffers: list[Octets] = []
+    names: list[str] = []
+
+    def take(batches: Sequence[Any], octets: Octets | None, name: str) -> None:
+        for packets in batches:
+            if packets.octets is not octets:
+                # Datagrams put together from fragments lie in a buffer of their own.
+                buffers.append(packets.octets)
+                names.append(name)
+                collector.add(packets, len(buffers) - 1)
+            else:
+                collector.add(packets, here)
+
+    passed = 0
+    for file in recording.files:
+        here = len(buffers)
+        buffers.append(file.octets)
+        names.append(file.name)
+        for frames in file.batches():
+            take(decoder.decode(frames, file.name), file.octets, file.name)
+            progress(passed + (int(frames.start[-1]) if len(frames) else 0))
+        passed += len(file.octets)
+        progress(passed)
+    take(decoder.finish(), None, recording.name)
+    damage = [*recording.damage, *decoder.damage]
+    streams = find_streams(collector, decoder.flows, buffers, recording=number, captures=names, given=given)
+    return Heard(streams, buffers, damage)
