@@ -130,13 +130,6 @@ def test_the_folder_holds_the_files_promised(tmp_path: Path) -> None:
 
 def test_tables_read_back_with_the_kinds_promised(tmp_path: Path) -> None:
     write_folder(made.Audited(), tmp_path / "out", audio=False)
-    dtypes = {
-        "text": "string",
-        "count": "Int64",
-        "number": "float64",
-        "time": "datetime64[ns, UTC]",
-        "yes_no": "boolean",
-    }
     for table, columns in TABLES.items():
         frame = pd.read_parquet(tmp_path / "out" / f"{table}.parquet")
         assert isinstance(frame.index, pd.RangeIndex)
