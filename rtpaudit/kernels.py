@@ -35,3 +35,8 @@ def on_first_compilation(announce: Callable[[], None]) -> None:
             return
 
     event.register("numba:compile", Listener())  # type: ignore[no-untyped-call]
+
+
+def inlined(function: F) -> F:
+    """A small part of a kernel, compiled into each kernel that calls it and not on its own."""
+    return cast(F, njit(nogil=True, error_model="numpy", forceinline=True)(function))
