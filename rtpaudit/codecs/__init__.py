@@ -8,6 +8,7 @@ from collections.abc import Callable
 from dataclasses import dataclass
 from functools import cache
 from importlib import import_module
+from importlib.util import find_spec
 from typing import Any, cast
 
 import numpy as np
@@ -33,8 +34,6 @@ class Codec:
     samples_per_block: int = 1
     any_rate: bool = False
     """sampled at whatever clock rate was agreed; ``clock_rate_hz`` is then only the usual one"""
-    look_ahead_ms: float = 0.0
-    """part of a frame that the coder must hear in advance [ms]"""
     table: str = ""
     """``module:attribute`` of the 256 sample values of a code that has one octet a sample"""
     extra: str = ""
@@ -49,20 +48,60 @@ class Codec:
         return octets // self.octets_per_block * self.samples_per_block if self.octets_per_block else 0
 
 
+EXTRAS = {"codecs": "av"}
+"""module that each extra of the package brings"""
+
 G711 = "rtpaudit.codecs.g711"
+LINEAR = "rtpaudit.codecs.l16"
+OPTIONAL = "rtpaudit.codecs.optional"
+
+
+def _optional(name: str, octets_per_block: int, samples_per_block: int, rate_hz: int = 8000) -> Codec:
+    return Codec(f"{OPTIONAL}:{name}", rate_hz, rate_hz, octets_per_block, samples_per_block, extra="codecs")
+
 
 CODECS: dict[str, Codec] = {
     "PCMU": Codec(f"{G711}:decode_pcmu_packets", 8000, 8000, table=f"{G711}:PCMU_SAMPLES"),
     "PCMA": Codec(f"{G711}:decode_pcma_packets", 8000, 8000, table=f"{G711}:PCMA_SAMPLES"),
+    # The RTP clock stays at 8 kHz though it samples at 16 kHz (RFC 3551, 4.5.2).
+    "G722": Codec("rtpaudit.codecs.g722:decode_g722_packets", 8000, 16000, 1, 2),
+    "L16": Codec(f"{LINEAR}:decode_l16_packets", 44100, 44100, 2, 1, any_rate=True),
+    "L8": Codec(f"{LINEAR}:decode_l8_packets", 8000, 8000, any_rate=True, table=f"{LINEAR}:L8_SAMPLES"),
+    "G726-16": _optional("g726_16", 1, 4),
+    "G726-24": _optional("g726_24", 3, 8),
+    "G726-32": _optional("g726_32", 1, 2),
+    "G726-40": _optional("g726_40", 5, 8),
+    "AAL2-G726-16": _optional("aal2_g726_16", 1, 4),
+    "AAL2-G726-24": _optional("aal2_g726_24", 3, 8),
+    "AAL2-G726-32": _optional("aal2_g726_32", 1, 2),
+    "AAL2-G726-40": _optional("aal2_g726_40", 5, 8),
+    # Frames of 24, 20 or 4 octets for 240 samples (RFC 3551, 4.5.3).
+    "G723": _optional("g723", 0, 0),
+    "G729": _optional("g729", 10, 80),
+    "GSM": _optional("gsm", 33, 160),
+    # 38 octets for 160 samples or 50 for 240 (RFC 3951).
+    "iLBC": _optional("ilbc", 0, 0),
+    # RFC 7587: the clock counts 48,000 a second whatever the coder does.
+    "opus": _optional("opus", 0, 0, 48_000),
 }
 """Keys are IANA media subtypes; RFC 3551 gives clock and sampling rate where no other source stands beside the row."""
 
 
 def codec_of(encoding: str) -> Codec:
-    """The row of an encoding, whatever its letter case. Raises MissingCodec with the encodings that are known."""
+    """The row of an encoding that can be decoded here, in any letter case.
+
+    Raises
+    ------
+    MissingCodec
+        Names the encodings that are known, or the extra that brings the decoder of this one.
+    """
     codec = CODECS.get(encoding) or _BY_LOWER_CASE.get(encoding.lower())
     if codec is None:
         raise MissingCodec(f"no decoder for {encoding}; decoders exist for {', '.join(CODECS)}")
+    if codec.extra and not _is_installed(EXTRAS[codec.extra]):
+        raise MissingCodec(
+            f"the decoder for {encoding} is not installed; pip install 'rtpaudit[{codec.extra}]' brings it"
+        )
     return codec
 
 
@@ -97,6 +136,11 @@ def sample_table(encoding: str) -> Samples | None:
     """The 256 samples of an encoding of one octet a sample, None for any other. Raises MissingCodec as ``decode``."""
     table = codec_of(encoding).table
     return cast(Samples, _load(table)) if table else None
+
+
+@cache
+def _is_installed(module: str) -> bool:
+    return find_spec(module) is not None
 
 
 @cache
