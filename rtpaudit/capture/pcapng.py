@@ -17,6 +17,9 @@ MOST_INTERFACES = 1 << 16
 MOST_RARE_BLOCKS = 1_000_000
 """Section headers, interface descriptions and statistics are read one by one: a file of nothing else has to end."""
 MOST_OPTION_OCTETS = 1 << 16
+MOST_TRAILING_OCTETS = 64
+"""Behind a frame in its block: padding, options and a length. More than that were blocks of their own."""
+LONGEST_FRAME = 1 << 20
 
 
 class PcapngReader:
@@ -29,7 +32,7 @@ class PcapngReader:
         self.interfaces: list[Interface] = []
         self._big = False
         self._first = 0
-        self._trusted = -1
+        self._trusted = self._trusted_end = -1
         self._rare_blocks = 0
         self._table = np.zeros((16, 5), np.int64)
         self._stated: set[int] = set()
@@ -51,7 +54,7 @@ class PcapngReader:
     def _fill(self, columns: FrameColumns) -> None:
         while True:
             rows, self.position, stopped = blocks.index_blocks(
-                self.octets, self.position, self._big, self._trusted,
+                self.octets, self.position, self._big, self._trusted, self._trusted_end,
                 self._first, len(self.interfaces) - self._first, self._table, self._state, *columns.free(),
             )  # fmt: skip
             columns.rows += rows
@@ -78,7 +81,7 @@ class PcapngReader:
         kind, total = struct.unpack(self._order("II"), self.octets[self.position : self.position + 8].tobytes())
         if kind == blocks.SECTION_HEADER:
             return self._read_section()
-        end = min(self.position + total, len(self.octets))
+        end = self._trusted_end if self.position == self._trusted else self.position + total
         body = self.octets[self.position + 8 : min(end - 4, self.position + MOST_OPTION_OCTETS)].tobytes()
         if kind == blocks.STATISTICS:
             self._read_statistics(body)
@@ -104,12 +107,17 @@ class PcapngReader:
         self._big, self._first = orders[0], len(self.interfaces)
         total, _, major, minor = struct.unpack_from(self._order("IIHH"), head, 4)
         end = self.position + total
-        sound = total >= SECTION_HEADER_LENGTH and blocks.block_end(self.octets, self.position, self._big) == end
-        if self.position != self._trusted and not (sound and end <= len(self.octets)):
+        if self.position == self._trusted:
+            end = self._trusted_end
+        elif (
+            total < SECTION_HEADER_LENGTH
+            or blocks.block_end(self.octets, self.position, self._big) != end
+            or end > len(self.octets)
+        ):
             return False
         if major != 1:
             self.damage.add(self.position, f"a section of the unknown version {major}.{minor}", "nothing, if 1.0 fits")
-        self.position = min(end, len(self.octets))
+        self.position = end
         return True
 
     def _read_interface(self, body: bytes) -> None:
@@ -134,28 +142,51 @@ class PcapngReader:
             self._stated.add(row)
 
     def _mend(self) -> None:
-        """Read a block with one wrong length all the same, else go on at the next block that is whole."""
+        """Read a block with a wrong length up to where the next one begins, or pass over what is none."""
         broken, size = self.position, len(self.octets)
         if broken == size:
             return
         total = struct.unpack(self._order("I"), self.octets[broken + 4 : broken + 8].tobytes().ljust(4, b"\0"))[0]
         end = broken + total
-        if (
-            broken != self._trusted
-            and total >= 12
-            and (end == size or (end < size and blocks.block_end(self.octets, end, self._big) >= 0))
-        ):
+        followed = end == size or (end < size and blocks.block_end(self.octets, end, self._big) >= 0)
+        if total >= 12 and followed and self._trust(end):
             self.damage.add(broken, "a block whose two lengths disagree", "nothing")
-            self._trusted = broken
             return
         found = blocks.find_block(self.octets, broken + 1, self._big)
-        if found < 0 and end > size and broken != self._trusted and size - broken >= SECTION_HEADER_LENGTH:
+        next_one = size if found < 0 else found
+        cut = found < 0 and end > size
+        if cut and size - broken >= SECTION_HEADER_LENGTH and self._trust(size):
             self.damage.add(broken, f"the file ends within a block of {octets_text(total)}", octets_text(end - size))
-            self._trusted = broken
             return
-        self.position = size if found < 0 else found
-        what = "the file ends within a block" if found < 0 and end > size else "octets that are no block"
-        self.damage.add(broken, what, octets_text(self.position - broken))
+        if self._frame_end(broken) <= next_one and self._trust(next_one):
+            lost = next_one - self._frame_end(broken)
+            what = f"a block of {octets_text(total)} that does not fit what follows"
+            self.damage.add(broken, what, octets_text(lost) if lost > MOST_TRAILING_OCTETS else "nothing")
+            return
+        self.position = next_one
+        what = "the file ends within a block" if cut else "octets that are no block"
+        self.damage.add(broken, what, octets_text(next_one - broken))
+
+    def _trust(self, end: int) -> bool:
+        """Have the block at the position read up to ``end``, unless that has been tried."""
+        if self._trusted == self.position:
+            return False
+        self._trusted, self._trusted_end = self.position, end
+        return True
+
+    def _frame_end(self, at: int) -> int:
+        """End of the frame in a packet block whose header is sound but for its length, else past the file."""
+        nowhere = len(self.octets) + 1
+        head = self.octets[at : at + 28].tobytes()
+        if len(head) < 28:
+            return nowhere
+        kind, _, interface, _, _, captured, original = struct.unpack(self._order("7I"), head)
+        if kind == blocks.OBSOLETE_PACKET:
+            interface = struct.unpack_from(self._order("H"), head, 8)[0]
+        elif kind != blocks.ENHANCED_PACKET:
+            return nowhere
+        described = interface < len(self.interfaces) - self._first
+        return at + 28 + captured if described and 0 < captured <= original <= LONGEST_FRAME else nowhere
 
     def _give_up(self, what: str) -> bool:
         self.damage.add(self.position, what, octets_text(len(self.octets) - self.position))

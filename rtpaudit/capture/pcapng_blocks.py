@@ -80,6 +80,7 @@ def packet_at(
     octets: Octets,
     position: int,
     end: int,
+    sound: bool,
     kind: int,
     big: bool,
     first: int,
@@ -89,10 +90,10 @@ def packet_at(
 ) -> tuple[int, int, int, int]:
     """Interface, first octet, captured and original length of a packet block's frame; interface -1 to leave it out.
 
-    Its time is left in ``state``. A block that the file cuts has no length at its end.
+    ``end`` is that of the block, without the length in its last four octets. Its time is left in ``state``.
     """
     start = position + (12 if kind == SIMPLE_PACKET else 28)
-    room = end - 4 - start if end <= len(octets) else len(octets) - start
+    room = end - start
     if room < 0:
         note(state, CLIPPED, position)
         return -1, 0, 0, 0
@@ -111,14 +112,14 @@ def packet_at(
         length = min(wire, table[which, SNAP_LENGTH], room)
     else:
         length, wire = u32(octets, position + 20, big), u32(octets, position + 24, big)
-        if length > room and end <= len(octets):
+        if length > room and sound:
             note(state, CLIPPED, position)
         length = min(length, room)
         high, low = u32(octets, position + 12, big), u32(octets, position + 16, big)
         state[LAST_TIME] = to_ns(high, low, table[which, UNIT], table[which, FACTOR], table[which, OFFSET_NS])
         after = start + (length + 3) // 4 * 4
-        if kind == ENHANCED_PACKET and after + 4 < end:
-            table[which, DROPPED] += drop_count(octets, after, min(end - 4, len(octets)), big)
+        if kind == ENHANCED_PACKET and after < end:
+            table[which, DROPPED] += drop_count(octets, after, end, big)
         elif kind == OBSOLETE_PACKET and u16(octets, position + 10, big) < 0xFFFF:
             table[which, DROPPED] += u16(octets, position + 10, big)
     return which, start, length, wire if length <= wire < 1 << 31 else length
@@ -130,6 +131,7 @@ def index_blocks(
     position: int,
     big: bool,
     trusted: int,
+    trusted_end: int,
     first: int,
     described: int,
     table: NDArray[np.int64],
@@ -143,7 +145,7 @@ def index_blocks(
     """Fill the columns from ``position`` on: rows filled, next position, and why it stopped.
 
     The section's interfaces are the rows ``first`` to ``first + described`` of ``table``. The block at ``trusted`` is
-    read although its lengths disagree or the file ends within it.
+    read up to ``trusted_end``, whatever its lengths say.
     """
     row = 0
     while position < len(octets):
@@ -154,31 +156,43 @@ def index_blocks(
             return row, position, RARE
         end = position + total
         sound = total >= 12 and end <= len(octets) and u32(octets, end - 4, big) == total
-        if not sound and position != trusted:
-            return row, position, BROKEN
+        if not sound:
+            if position != trusted:
+                return row, position, BROKEN
+            end = trusted_end
         if kind in (INTERFACE, STATISTICS):
             return row, position, RARE
         if kind in (ENHANCED_PACKET, SIMPLE_PACKET, OBSOLETE_PACKET):
             if row == len(start):
                 return row, position, FULL
-            which, begin, length, wire = packet_at(octets, position, end, kind, big, first, described, table, state)
+            body_end = end - 4 if sound else end
+            which, begin, length, wire = packet_at(
+                octets, position, body_end, sound, kind, big, first, described, table, state
+            )
             if which >= 0:
                 start[row], captured[row], original[row] = begin, length, wire
                 time_ns[row], interface[row] = state[LAST_TIME], which
                 row += 1
-        position = min(end, len(octets))
+        position = end
     return row, position, COMPLETE
 
 
 @kernel
+def order_at(octets: Octets, at: int, big: bool) -> bool:
+    """Byte order of the block that may begin here: a section header brings its own, others have ``big``."""
+    if at + 12 > len(octets) or u32(octets, at, big) != SECTION_HEADER:
+        return big
+    return big == (u32(octets, at + 8, big) == BYTE_ORDER)
+
+
+@kernel
 def block_end(octets: Octets, at: int, big: bool) -> int:
-    """End of the block that may begin here, -1 where none can. A section header brings its own byte order."""
+    """End of the block that may begin here, -1 where none can."""
     if at + 12 > len(octets):
         return -1
+    big = order_at(octets, at, big)
     kind = u32(octets, at, big)
     if kind == SECTION_HEADER:
-        if u32(octets, at + 8, big) != BYTE_ORDER:
-            big = not big
         if u32(octets, at + 8, big) != BYTE_ORDER:
             return -1
     # Numbers given out so far are small, but for the custom blocks.
@@ -196,6 +210,8 @@ def find_block(octets: Octets, position: int, big: bool) -> int:
     """First position from here on at which a whole block lies, followed by another or by the end; -1 if none."""
     for at in range(position, len(octets) - 11):
         end = block_end(octets, at, big)
-        if end == len(octets) or (0 <= end < len(octets) and block_end(octets, end, big) >= 0):
+        if end == len(octets):
+            return at
+        if 0 <= end < len(octets) and block_end(octets, end, order_at(octets, at, big)) >= 0:
             return at
     return -1

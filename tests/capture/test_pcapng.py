@@ -216,14 +216,22 @@ def test_every_cut_keeps_the_whole_blocks_and_what_is_there_of_the_last(big: boo
 @ORDERS
 @pytest.mark.parametrize("place", ["first length", "last length"])
 @pytest.mark.parametrize("length", [0, 11, 12, 244, 252, 1000, 1 << 20, 0xFFFFFFFF])
-def test_a_wrong_length_costs_its_frame_at_most(big: bool, place: str, length: int) -> None:
+def test_a_wrong_length_loses_no_frame(big: bool, place: str, length: int) -> None:
     capture = bytearray(pcapng(FRAMES, big_endian=big))
     block = len(pcapng([])) + 2 * BLOCK
     at = block + 4 if place == "first length" else block + BLOCK - 4
     capture[at : at + 4] = length.to_bytes(4, "big" if big else "little")
     reading = read(bytes(capture))
-    assert reading.octets == (FRAMES[:2] + FRAMES[3:] if place == "first length" else FRAMES)
-    assert [row.offset for row in reading.damage] == [block]
+    assert reading.octets == FRAMES
+    assert [(row.offset, row.lost) for row in reading.damage] == [(block, "nothing")]
+
+
+def test_a_destroyed_block_header_loses_its_frame_alone() -> None:
+    block = len(pcapng([])) + 2 * BLOCK
+    capture = pcapng(FRAMES)
+    reading = read(capture[:block] + b"\xff" * 28 + capture[block + 28 :])
+    assert reading.octets == FRAMES[:2] + FRAMES[3:]
+    assert [(row.offset, row.lost) for row in reading.damage] == [(block, "248 octets")]
 
 
 @ORDERS
