@@ -66,7 +66,7 @@ def open_recordings(paths: Sequence[str | Path]) -> list[Recording]:
         except UnreadableCapture as fault:
             refused.append((path, fault))
     if not opened:
-        others = f" (and none of the {len(refused) - 1} others can be read either)" if len(refused) > 1 else ""
+        others = f" (and nothing of the other files given, {len(refused)} in all)" if len(refused) > 1 else ""
         raise UnreadableCapture(f"{refused[0][1]}{others}")
     recordings = group(opened) if len(opened) > 1 else [Recording(opened[0].name, (opened[0],))]
     return recordings + [_refused(path, fault) for path, fault in refused]
