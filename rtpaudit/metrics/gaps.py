@@ -16,6 +16,11 @@ LONGEST_PACKET_MS = 200
 LOOK_BACK = 64
 """Packets before a run that are asked for the packet time of the moment."""
 
+SLACK_NS = 2 * NS_PER_S
+"""What missing packets may be due behind the packet that arrived after them; only forged timestamps reach it."""
+
+LONGEST_NS = float(1 << 60)
+
 
 @dataclass(frozen=True, slots=True)
 class Gaps:
@@ -97,13 +102,14 @@ def spacing_ns(gaps: Gaps, runs: MissingRuns, time_ns: ArrayLike) -> NDArray[np.
     Returns
     -------
     int64 array, shape (gaps,)
-        Never negative. [ns]
+        Never negative, and never so long that the run ends far behind the arrival of the packet after it. [ns]
     """
     time = column(time_ns, np.int64)
-    even = (time[runs.after] - time[runs.before]) / (gaps.packets_missing + 1)
+    parted = np.maximum(time[runs.after] - time[runs.before], 0)
     by_media = gaps.duration_ms * NS_PER_MS / gaps.packets_missing
-    chosen = np.where(np.isnan(by_media), even, by_media)
-    return np.maximum(np.rint(chosen), 0).astype(np.int64)
+    chosen = np.where(np.isnan(by_media), parted / (gaps.packets_missing + 1), by_media)
+    longest = (parted.astype(np.float64) + SLACK_NS) / gaps.packets_missing
+    return np.asarray(np.rint(np.clip(chosen, 0.0, np.minimum(longest, LONGEST_NS))), np.int64)
 
 
 @kernel

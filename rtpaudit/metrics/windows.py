@@ -15,8 +15,8 @@ Floats = NDArray[np.float64]
 WINDOW_S = 2
 WINDOW_NS = WINDOW_S * NS_PER_S
 
-MOST_WINDOWS = 1 << 20
-"""24 days; what a mad capture clock puts beyond counts in the last window."""
+MOST_WINDOWS = 1 << 17
+"""Three days; what a mad capture clock puts beyond counts in the last window."""
 
 LONGEST_RUN_NS = 1 << 60
 PERCENTILE = 0.95

@@ -96,6 +96,13 @@ def test_a_clock_that_goes_backwards_makes_no_negative_spacing() -> None:
     assert spacing_ns(gaps, runs, unknown.time_ns).tolist() == [0]
 
 
+def test_a_forged_distance_does_not_carry_missing_packets_far_behind_the_next_arrival() -> None:
+    one = replace(by_numbers([0, 1, 4]), media_ticks=np.array([0, 1_600_000, 6_400_000]))
+    gaps, runs = both_of(one, packet_time_ms=200_000.0)
+    assert gaps.duration_ms.tolist() == [400_000.0]
+    assert spacing_ns(gaps, runs, one.time_ns).tolist() == [(60 + 2000) * MS // 2]
+
+
 @settings(max_examples=100, deadline=None)
 @given(streams())
 def test_durations_follow_the_timestamps_or_the_packet_count(one) -> None:

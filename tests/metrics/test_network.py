@@ -6,6 +6,7 @@ from dataclasses import replace
 import numpy as np
 import pytest
 from hypothesis import given, settings
+from hypothesis import strategies as st
 
 from rtpaudit.metrics.network import NetworkFigures, network_figures
 from tests.metrics.streams import MS, STARTED_NS, Columns, by_numbers, paced, streams
@@ -155,6 +156,21 @@ def test_a_forged_jump_of_the_numbers_costs_little() -> None:
     one = by_numbers([0, 1, 2])
     found = figures_of(replace(one, extended=np.array([0, 1, 1 << 50])))
     assert found.windows.packets_lost.sum() == found.packets_lost == (1 << 50) - 2
+
+
+WIDE = st.integers(-(2**61), 2**61)
+FORGED = st.tuples(WIDE, st.integers(0, 2**44), st.integers(0, 3), WIDE, st.booleans(), st.sampled_from([8000, 0, -1]))
+
+
+@settings(max_examples=100, deadline=None)
+@given(
+    st.lists(FORGED, min_size=1, max_size=30, unique_by=lambda row: row[1:3]), st.sampled_from([20.0, 0.0, math.nan])
+)
+def test_columns_that_no_sender_ever_sent_still_add_up(rows, packet_time_ms) -> None:
+    time_ns, extended, segment, ticks, audio, rate = map(list, zip(*rows, strict=True))
+    found = network_figures(time_ns, extended, segment, [False] * len(rows), ticks, audio, rate, packet_time_ms)
+    assert found.windows.packets_lost.sum() == found.packets_lost
+    assert found.windows.packets_expected.sum() == found.packets_expected
 
 
 def test_one_column_too_short_is_refused() -> None:
