@@ -66,7 +66,7 @@ class Audit:
         raise AttributeError(f"an audit has no {name!r}; its tables are {', '.join(TABLES)}")
 
     def samples(self, stream: str, heard: bool = False) -> NDArray[np.int16]:
-        """What the payloads of a stream say, on its RTP timeline.
+        """What the payloads of a stream say, on its RTP timeline, or what was heard after playout and concealment.
 
         Raises
         ------
@@ -77,7 +77,7 @@ class Audit:
         """
         if stream not in {one.id for one in self.assessment.streams}:
             raise UnusableArguments(f"there is no stream {stream!r}")
-        return self.sound.sent(stream)[0]
+        return (self.sound.heard(stream) if heard else self.sound.sent(stream))[0]
 
     def write(self, folder: str | Path, *, audio: bool = True, private: bool = False) -> None:
         """Write the report folder; UnusableOutput where it cannot be, or is not ours to replace."""
@@ -130,7 +130,7 @@ def audit(
     names = [file.name for recording in recordings for file in recording.files]
     buffers = [one.buffers for one in heard]
     assessment = assess(streams, pair_streams(streams), chosen, names, damage)
-    return Audit(assessment, SoundSource(buffers, assessment.streams), chosen)
+    return Audit(assessment, SoundSource(buffers, assessment.streams, chosen.conceals_loss), chosen)
 
 
 def _from(progress: Progress | None, done: int, total: int) -> Callable[[int], None]:

@@ -122,7 +122,7 @@ def test_the_folder_holds_the_files_promised(tmp_path: Path) -> None:
     files = {str(path.relative_to(tmp_path / "out")) for path in (tmp_path / "out").rglob("*") if path.is_file()}
     tables = ["calls", "streams", "gaps", "windows", "findings", "signalling", "events", "reports", "damage"]
     promised = {f"{table}.{kind}" for table in tables for kind in ("csv", "parquet")} | {"audit.json"}
-    sound = {"audio/c01.wav", "audio/c01-s01-sent.wav", "audio/c01-s02-sent.wav"}
+    sound = {"audio/c01.wav", "audio/c01-s01-sent.wav", "audio/c01-s02-sent.wav", "audio/c01-s01-heard.wav"}
     assert promised <= files
     assert sound <= files
     assert all(file in promised or file.startswith("audio/") for file in files)

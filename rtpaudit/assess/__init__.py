@@ -5,7 +5,7 @@ from collections.abc import Sequence
 import numpy as np
 
 from rtpaudit.assess.call import assess_call
-from rtpaudit.assess.rating import Rated, rate, rate_windows
+from rtpaudit.assess.rating import Rated, budgets, curves, rate, rate_windows
 from rtpaudit.assess.results import AssessedStream, Assessment, WindowColumns
 from rtpaudit.assess.stream import Measured, measure
 from rtpaudit.capture.frames import Damage
@@ -25,13 +25,31 @@ def assess(
 
     ``streams`` come in the order in which they are numbered, and so do ``calls``, which refer to them.
     """
-    measured = [measure(stream) for stream in streams]
+    measured = [measure(stream, profile) for stream in streams]
     rated = rate(streams, [one.path(profile) for one in measured], profile)
-    _note_ratings(measured, rated, profile)
+    _note_ratings(measured, rated)
     windows = _windows(measured, rated, profile)
+    steps = budgets(
+        rated,
+        [one.network.packets_lost for one in measured],
+        [len(one.playback.discarded) if one.playback else 0 for one in measured],
+    )
+    buffers = curves([one.playback for one in measured], rated, profile)
     assessed = [
-        AssessedStream(f"s{k:02d}", "", one.stream, one.started_ns, one.ended_ns, one.figures, one.gaps, windows[k - 1])
-        for k, one in enumerate(measured, 1)
+        AssessedStream(
+            id=f"s{k + 1:02d}",
+            call="",
+            stream=one.stream,
+            started_ns=one.started_ns,
+            ended_ns=one.ended_ns,
+            figures=one.figures,
+            gaps=one.gaps,
+            windows=windows[k],
+            budget=steps[k],
+            playback=one.playback,
+            curve=buffers[k],
+        )
+        for k, one in enumerate(measured)
     ]
     by_stream = {id(one.stream): one for one in assessed}
     return Assessment(
@@ -50,7 +68,7 @@ def assess(
     )
 
 
-def _note_ratings(measured: Sequence[Measured], rated: Rated, profile: Profile) -> None:
+def _note_ratings(measured: Sequence[Measured], rated: Rated) -> None:
     for k, one in enumerate(measured):
         figures = one.figures
         figures.one_way_delay_ms = float(rated.delay_ms[k])
@@ -62,14 +80,20 @@ def _note_ratings(measured: Sequence[Measured], rated: Rated, profile: Profile) 
         figures.r_factor_high = float(rated.high[k])
         figures.rating_note = rated.notes[k]
         figures.quality_band = rated.bands[k]
-        figures.playout_delay_ms = profile.playout.nominal_ms
 
 
 def _windows(measured: Sequence[Measured], rated: Rated, profile: Profile) -> list[WindowColumns]:
     """The windows of every stream, all rated in one go."""
     found = [one.network.windows for one in measured]
     counts = np.array([len(one.from_s) for one in found], np.int64)
-    loss = np.concatenate([np.empty(0), *(one.loss_pct for one in found)])
+    discarded = [one.playback.discarded_per_window if one.playback else None for one in measured]
+    missed = [
+        one.packets_lost if late is None else one.packets_lost + late
+        for one, late in zip(found, discarded, strict=True)
+    ]
+    expected = np.concatenate([np.empty(0), *(one.packets_expected for one in found)])
+    with np.errstate(invalid="ignore"):
+        loss = 100.0 * np.concatenate([np.empty(0), *missed]) / expected
     R = rate_windows(loss, np.repeat(np.arange(len(found)), counts), rated, profile)
     edges = np.concatenate([[0], np.cumsum(counts)])
     nothing = np.full(int(counts.max(initial=0)), np.nan)
@@ -78,7 +102,7 @@ def _windows(measured: Sequence[Measured], rated: Rated, profile: Profile) -> li
             from_s=one.from_s,
             packets_expected=one.packets_expected,
             packets_lost=one.packets_lost,
-            packets_discarded=None,
+            packets_discarded=discarded[k],
             loss_pct=one.loss_pct,
             jitter_ms=one.jitter_ms,
             pdv_p95_ms=one.pdv_p95_ms,

@@ -6,6 +6,9 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from rtpaudit.assess.playback import Playback
+from rtpaudit.assess.results import BufferCurve
+from rtpaudit.emodel.budget import Budget, budget
 from rtpaudit.emodel.g107 import Parts, mos_from_r, rating
 from rtpaudit.emodel.g109 import quality_band
 from rtpaudit.emodel.g113 import impairment, reason_for_no_rating
@@ -20,6 +23,8 @@ Values = NDArray[np.float64]
 NARROWBAND_HZ = 8000
 SEVERAL_BIT_RATES = ("G723",)
 """encodings whose packets tell which of several rows of G.113 holds"""
+NEAR_BEST = 0.5
+"""points of R that nobody hears: of buffers that near the best the shortest is named"""
 ENCRYPTED = "the payload is encrypted: rated by its packets alone"
 
 
@@ -55,7 +60,10 @@ class Rated:
 
     codec: CodecColumns
     telr_db: Values
+    fixed_ms: Values
+    """mouth-to-ear delay without the playout buffer [ms]"""
     delay_ms: Values
+    """mouth-to-ear delay [ms]"""
     delay_basis: list[str]
     parts: Parts
     """NaN throughout where the encoding has no values"""
@@ -90,20 +98,14 @@ def rate(streams: Sequence[Stream], paths: Sequence[Path], profile: Profile) -> 
     codec = codec_columns(streams, profile)
     network = np.array([path.network_ms for path in paths], np.float64)
     assumed = np.isnan(network)
-    fixed_ms = np.array(
-        [
-            path.playout_ms + (stream.packet_time_ms or 0.0) + look_ahead_ms(stream.encoding)
-            for stream, path in zip(streams, paths, strict=True)
-        ],
-        np.float64,
-    )
-    fixed_ms = np.nan_to_num(fixed_ms)
+    coding_ms = np.nan_to_num([one.packet_time_ms + look_ahead_ms(one.encoding) for one in streams])
+    playout_ms = np.array([path.playout_ms for path in paths], np.float64)
     loss = np.array([path.loss_pct for path in paths], np.float64)
     burst = np.array([path.burst_ratio for path in paths], np.float64)
     telr = np.nan_to_num(np.array([path.telr_db for path in paths], np.float64), nan=PARAMETERS["TELR"].default)
 
     def rated(assumed_ms: float) -> Parts:
-        delay = np.where(assumed, assumed_ms, network) + fixed_ms
+        delay = np.where(assumed, assumed_ms, network) + coding_ms + playout_ms
         return rating(
             profile.planning,
             Ta=delay,
@@ -115,7 +117,8 @@ def rate(streams: Sequence[Stream], paths: Sequence[Path], profile: Profile) -> 
         )
 
     parts = rated(profile.network.assumed_ms)
-    delay_ms = np.where(assumed, profile.network.assumed_ms, network) + fixed_ms
+    fixed_ms = np.where(assumed, profile.network.assumed_ms, network) + coding_ms
+    delay_ms = fixed_ms + playout_ms
     notes = [
         _note(stream, note, path, float(delay))
         for stream, note, path, delay in zip(streams, codec.notes, paths, delay_ms, strict=True)
@@ -124,6 +127,7 @@ def rate(streams: Sequence[Stream], paths: Sequence[Path], profile: Profile) -> 
     return Rated(
         codec,
         telr,
+        fixed_ms,
         delay_ms,
         [path.network_basis or "assumed" for path in paths],
         parts,
@@ -150,6 +154,44 @@ def rate_windows(loss_pct: Values, stream: NDArray[np.int64], rated: Rated, prof
         TELR=rated.telr_db[of],
     ).R
     return R
+
+
+def budgets(rated: Rated, lost: Sequence[int], discarded: Sequence[int]) -> list[Budget]:
+    """The way from Ro to R of each stream, by its lost and discarded packets."""
+    whole = budget(rated.parts, lost, discarded)
+    columns = {name: getattr(whole, name) for name in Budget.__dataclass_fields__}
+    return [Budget(**{name: column[k] for name, column in columns.items()}) for k in range(len(lost))]
+
+
+def curves(playbacks: Sequence[Playback | None], rated: Rated, profile: Profile) -> list[BufferCurve | None]:
+    """R of each stream at fixed playout buffers of other delays."""
+    rows = [k for k, one in enumerate(playbacks) if one is not None]
+    found: list[BufferCurve | None] = [None] * len(playbacks)
+    tried = [one.what_if for one in playbacks if one is not None]
+    if not rows:
+        return found
+    buffered = np.stack([one.mean_delay_ms for one in tried])
+    nominal = np.stack([one.delay_ms for one in tried])
+    R = rating(
+        profile.planning,
+        Ta=rated.fixed_ms[rows, None] + np.where(np.isnan(buffered), nominal, buffered),
+        Ie=rated.codec.Ie[rows, None],
+        Bpl=rated.codec.Bpl[rows, None],
+        Ppl=np.stack([one.lost_pct for one in tried]),
+        BurstR=np.stack([one.burst_ratio for one in tried]),
+        TELR=rated.telr_db[rows, None],
+    ).R
+    for row, k in enumerate(rows):
+        known = not np.isnan(R[row]).any()
+        best = int(np.argmax(R[row] >= R[row].max() - NEAR_BEST)) if known else 0
+        found[k] = BufferCurve(
+            tried[row].delay_ms,
+            tried[row].discard_pct,
+            R[row],
+            float(tried[row].delay_ms[best]) if known else float("nan"),
+            float(R[row, best]),
+        )
+    return found
 
 
 def _bit_rate(stream: Stream) -> float:

@@ -5,7 +5,9 @@ from dataclasses import dataclass, field, fields
 import numpy as np
 from numpy.typing import NDArray
 
+from rtpaudit.assess.playback import Playback
 from rtpaudit.capture.frames import Damage
+from rtpaudit.emodel.budget import Budget
 from rtpaudit.media.streams import Stream
 
 NAN = float("nan")
@@ -90,6 +92,19 @@ class WindowColumns:
     level_dbov: NDArray[np.float64]
 
 
+@dataclass(frozen=True, slots=True)
+class BufferCurve:
+    """R against the delay of a fixed playout buffer, from the same arrivals. Arrays of shape (delays,)."""
+
+    delay_ms: NDArray[np.float64]
+    discard_pct: NDArray[np.float64]
+    r_factor: NDArray[np.float64]
+    """NaN throughout where the encoding has no values"""
+    best_ms: float
+    """least delay whose rating is within half a point of the best; NaN without ratings"""
+    best_r: float
+
+
 @dataclass(slots=True)
 class AssessedStream:
     """A stream at the end of its way along the benches."""
@@ -103,6 +118,11 @@ class AssessedStream:
     figures: StreamFigures
     gaps: GapColumns
     windows: WindowColumns
+    budget: Budget | None = None
+    """how the rating goes from Ro down to R; NaN throughout where there is none"""
+    playback: Playback | None = None
+    """None where the stream has no audio or no known clock"""
+    curve: BufferCurve | None = None
 
 
 @dataclass(slots=True)

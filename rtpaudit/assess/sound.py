@@ -6,6 +6,8 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from rtpaudit.assess.ear import heard_samples
+from rtpaudit.assess.playback import packet_ticks
 from rtpaudit.assess.results import AssessedCall, AssessedStream
 from rtpaudit.capture.frames import Octets
 from rtpaudit.codecs import codec_of, decode, sample_table
@@ -36,8 +38,11 @@ class Laid:
 class SoundSource:
     """Decoded audio of one audit's streams, made when it is asked for and never kept."""
 
-    def __init__(self, buffers: Sequence[Sequence[Octets]], streams: Sequence[AssessedStream]) -> None:
+    def __init__(
+        self, buffers: Sequence[Sequence[Octets]], streams: Sequence[AssessedStream], conceals_loss: bool = True
+    ) -> None:
         self._buffers = buffers
+        self._conceals_loss = conceals_loss
         self._streams = {one.id: one for one in streams}
 
     def why_silent(self, stream_id: str) -> str:
@@ -51,8 +56,21 @@ class SoundSource:
         laid = lay_out(stream)
         return sent_samples(stream, laid, self._buffers[stream.recording]), laid.rate_hz
 
+    def heard(self, stream_id: str) -> tuple[Samples, int]:
+        """The same after the playout buffer and concealment, as long as sent. MissingCodec."""
+        one = self._streams[stream_id]
+        laid = lay_out(one.stream)
+        return self._heard(one, laid), laid.rate_hz
+
+    def _heard(self, one: AssessedStream, laid: Laid) -> Samples:
+        buffers = self._buffers[one.stream.recording]
+        sent = sent_samples(one.stream, laid, buffers)
+        return heard_samples(
+            one.stream, one.playback, sent, laid.rows, laid.position, laid.rate_hz, buffers, self._conceals_loss
+        )
+
     def both(self, call: AssessedCall) -> tuple[Samples, int]:
-        """Both directions on the capture's clock: left what the caller said, right what the callee said.
+        """Both directions as heard, on the capture's clock: left what the caller said, right what the callee said.
 
         Skew is taken out by dropping or repeating single quiet samples, as a receiver's playout does; the directions of
         one file are at the higher sampling rate of the two.
@@ -80,8 +98,7 @@ class SoundSource:
             if silence_reason(one.stream):
                 continue
             laid = lay_out(one.stream)
-            samples = sent_samples(one.stream, laid, self._buffers[one.stream.recording])
-            parts.append((keep_time(samples, one.figures.clock_skew_ppm), laid.rate_hz, laid.origin_ns))
+            parts.append((keep_time(self._heard(one, laid), one.figures.clock_skew_ppm), laid.rate_hz, laid.origin_ns))
         return parts
 
 
@@ -124,13 +141,9 @@ def _decodes_at(encoding: str, clock_rate_hz: int, rate_hz: int) -> bool:
 def sent_samples(stream: Stream, laid: Laid, buffers: Sequence[Octets]) -> Samples:
     """What the payloads of a stream say, on its timeline. Raises MissingCodec."""
     packets = stream.packets
-    sizes = np.zeros(len(laid.rows), np.int64)
     types = packets.payload_type[laid.rows]
     present = np.flatnonzero(np.bincount(types, minlength=128)).tolist()
-    for number in present:
-        codec = codec_of(stream.encodings[number].name)
-        mine = types == number
-        sizes[mine] = packets.length[laid.rows[mine]] // max(codec.octets_per_block, 1) * codec.samples_per_block
+    sizes = packet_ticks(stream)[laid.rows] * laid.rate_hz // stream.clock_rate_hz
     total = min(span(laid.position, sizes), LONGEST_TIMELINE_S * laid.rate_hz)
     timeline = np.zeros(total, np.int16)
     for number in present:

@@ -5,9 +5,10 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from rtpaudit.assess.playback import Playback, is_audio, play_back
 from rtpaudit.assess.rating import Path
 from rtpaudit.assess.results import STREAM_FIGURES, GapColumns, StreamFigures
-from rtpaudit.media.streams import Content, Stream
+from rtpaudit.media.streams import Stream
 from rtpaudit.metrics.network import NetworkFigures, network_figures
 from rtpaudit.profile import Profile
 
@@ -21,6 +22,7 @@ class Measured:
     ended_ns: int
     network: NetworkFigures
     figures: StreamFigures
+    playback: Playback | None
 
     @property
     def gaps(self) -> GapColumns:
@@ -34,36 +36,51 @@ class Measured:
         """What the rating asks of this stream."""
         given = profile.network.delay_ms
         return Path(
-            loss_pct=self.figures.loss_pct,
+            loss_pct=self.figures.loss_pct + (self.playback.discard_pct if self.playback else 0.0),
             burst_ratio=self.figures.burst_ratio,
             network_ms=float("nan") if given is None else given,
             network_basis="" if given is None else "given",
-            playout_ms=profile.playout.nominal_ms,
+            playout_ms=self.figures.playout_delay_ms,
         )
 
 
 _SHARED = tuple(name for name in STREAM_FIGURES if name in NetworkFigures.__dataclass_fields__)
 
 
-def measure(stream: Stream) -> Measured:
-    """The network figures of one stream."""
+def measure(stream: Stream, profile: Profile) -> Measured:
+    """The network figures of one stream, and what the receiver's buffer makes of it."""
     packets = stream.packets
     started_ns, ended_ns = int(packets.time_ns.min()), int(packets.time_ns.max())
-    audio = (packets.content == Content.AUDIO) | (packets.content == Content.REDUNDANT)
     network = network_figures(
         packets.time_ns,
         packets.extended,
         packets.segment,
         packets.duplicate,
         packets.media_ticks,
-        audio,
+        is_audio(stream),
         clock_rates(stream),
         stream.packet_time_ms,
         started_ns,
     )
     figures = StreamFigures(**{name: getattr(network, name) for name in _SHARED})
     figures.dscp = int(np.bincount(packets.dscp).argmax())
-    return Measured(stream, started_ns, ended_ns, network, figures)
+    playback = play_back(stream, network, profile.playout, started_ns) if stream.media == "audio" else None
+    figures.playout_delay_ms = profile.playout.nominal_ms
+    if playback is not None:
+        _note_playback(figures, playback)
+    return Measured(stream, started_ns, ended_ns, network, figures, playback)
+
+
+def _note_playback(figures: StreamFigures, playback: Playback) -> None:
+    if not np.isnan(playback.played.mean_delay_ms):
+        figures.playout_delay_ms = playback.played.mean_delay_ms
+    figures.packets_discarded = len(playback.discarded)
+    figures.discard_pct = playback.discard_pct
+    figures.burst_ratio = playback.burst_ratio
+    figures.burst_density_pct = playback.burst_gap.burst_density_pct
+    figures.burst_duration_ms = playback.burst_gap.burst_duration_ms
+    figures.gap_density_pct = playback.burst_gap.gap_density_pct
+    figures.gap_duration_ms = playback.burst_gap.gap_duration_ms
 
 
 def clock_rates(stream: Stream) -> NDArray[np.int32] | int:

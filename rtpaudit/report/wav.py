@@ -29,8 +29,11 @@ class AudioSource(Protocol):
     def sent(self, stream_id: str, /) -> Sound:
         """What the payloads of a stream say, on the RTP timeline."""
 
+    def heard(self, stream_id: str, /) -> Sound:
+        """The same after playout and concealment, as long and aligned with it."""
+
     def both(self, call: AssessedCall, /) -> Sound:
-        """Both sides of a call on the capture's clock."""
+        """Both sides of a call as heard, on the capture's clock."""
 
 
 def write_wav(path: Path, samples: Samples, rate_hz: int) -> None:
@@ -56,6 +59,8 @@ def write_wav(path: Path, samples: Samples, rate_hz: int) -> None:
     container = "WAV" if samples.nbytes < LARGEST_WAV else "RF64"
     try:
         with soundfile.SoundFile(partial, "w", rate_hz, channels, "PCM_16", format=container) as file:
+            # Closing would wait for the disk, file after file; a report that a power cut takes is made again.
+            file.flush = _do_not_wait
             for begin in range(0, len(samples), FRAMES_AT_ONCE):
                 file.write(samples[begin : begin + FRAMES_AT_ONCE])
         partial.replace(path)
@@ -63,6 +68,10 @@ def write_wav(path: Path, samples: Samples, rate_hz: int) -> None:
         raise UnusableOutput(f"{path}: cannot be written: {fault}; is the disk full?") from fault
     finally:
         partial.unlink(missing_ok=True)
+
+
+def _do_not_wait() -> None:
+    return
 
 
 def write_audio(
@@ -81,9 +90,10 @@ def write_audio(
         sounding = [one.id for one in call.streams if not _silent(one.id, source, left_out)]
         for stream in sounding:
             write_wav(folder / f"{call.id}-{stream}-sent.wav", *source.sent(stream))
+            write_wav(folder / f"{call.id}-{stream}-heard.wav", *source.heard(stream))
         if sounding:
             write_wav(folder / f"{call.id}.wav", *source.both(call))
-            files += len(sounding) + 1
+            files += 2 * len(sounding) + 1
         if progress:
             progress(done, len(calls))
     return files, [f"no sound of {_listed(ids)}: {reason}" for reason, ids in left_out.items()]

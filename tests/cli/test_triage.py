@@ -57,7 +57,7 @@ def test_json_is_all_there_is_on_standard_output(run: Run, tmp_path: Path) -> No
     assert [call["call"] for call in summary["calls"]] == ["c02", "c01"]
     assert summary["below"] == ["c02"]
     assert summary["captures"] == ["complaint.pcap"]
-    assert summary["audio_files"] == 6
+    assert summary["audio_files"] == 10
     assert summary["damage"][0]["offset"] == 4242
     assert summary["folder"] == "out"
     assert (tmp_path / "out").exists()

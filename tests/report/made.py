@@ -176,6 +176,10 @@ class Tones:
         assert stream_id not in self.without_decoder
         return np.full(80, int(stream_id[1:]), np.int16), 8000
 
+    def heard(self, stream_id: str) -> Sound:
+        samples, rate = self.sent(stream_id)
+        return -samples, rate
+
     def both(self, call: AssessedCall) -> Sound:
         return np.tile(np.array([[1, 2]], np.int16), (80, 1)), 8000
 

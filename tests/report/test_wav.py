@@ -65,16 +65,18 @@ def test_beyond_what_a_wav_header_can_count_the_file_is_rf64(tmp_path: Path, mon
 def test_each_call_has_its_streams_and_both_sides(tmp_path: Path) -> None:
     files, cautions = write_audio(tmp_path, made.assessment().calls, Tones())
     assert sorted(path.name for path in tmp_path.iterdir()) == [
-        "c01-s01-sent.wav", "c01-s02-sent.wav", "c01.wav", "c02-s03-sent.wav", "c02-s04-sent.wav", "c02.wav",
+        "c01-s01-heard.wav", "c01-s01-sent.wav", "c01-s02-heard.wav", "c01-s02-sent.wav", "c01.wav",
+        "c02-s03-heard.wav", "c02-s03-sent.wav", "c02-s04-heard.wav", "c02-s04-sent.wav", "c02.wav",
     ]  # fmt: skip
-    assert files == 6
+    assert files == 10
     assert cautions == []
     assert soundfile.read(tmp_path / "c02-s04-sent.wav", dtype="int16")[0][0] == 4
+    assert soundfile.read(tmp_path / "c02-s04-heard.wav", dtype="int16")[0][0] == -4
 
 
 def test_an_encoding_without_a_decoder_is_left_out_and_said(tmp_path: Path) -> None:
     files, cautions = write_audio(tmp_path, made.assessment().calls, Tones(without_decoder=("s01", "s02", "s04")))
-    assert files == 2
+    assert files == 3
     assert cautions == ["no sound of s01, s02, s04: no decoder for opus"]
     assert not (tmp_path / "c01.wav").exists()
 

@@ -1,0 +1,114 @@
+"""What came out of the earpiece: the sent timeline after the playout buffer, concealment and comfort noise."""
+
+from collections.abc import Sequence
+
+import numpy as np
+from numpy.typing import NDArray
+
+from rtpaudit.assess.playback import Playback, packet_ticks
+from rtpaudit.capture.frames import Octets
+from rtpaudit.codecs.comfort_noise import ComfortNoise, generate
+from rtpaudit.errors import MalformedPacket
+from rtpaudit.media.streams import Content, Stream
+from rtpaudit.playout.heard import heard, lost_stretches, noise_stretches
+from rtpaudit.playout.timeline import positions
+
+Samples = NDArray[np.int16]
+
+CONCEALED = ("PCMU", "PCMA")
+"""encodings whose losses ITU-T G.711 Appendix I conceals; the others are silent where packets are missing"""
+
+
+def heard_samples(
+    stream: Stream,
+    playback: Playback | None,
+    sent: Samples,
+    rows: NDArray[np.int64],
+    position: NDArray[np.int64],
+    rate_hz: int,
+    buffers: Sequence[Octets],
+    conceals_loss: bool,
+) -> Samples:
+    """The sent timeline with lost and late packets concealed, or silent, and comfort noise in its pauses.
+
+    Parameters
+    ----------
+    stream : Stream
+    playback : Playback or None
+        None where every packet is in time.
+    sent : int16 array, shape (n,)
+    rows, position : int64 arrays, shape (audio packets,)
+        As ``Laid`` has them.
+    rate_hz : int
+        Sampling rate of ``sent``. [Hz]
+    buffers : sequence of uint8 arrays
+        Of the stream's recording.
+    conceals_loss : bool
+        Whether the receiver conceals.
+
+    Returns
+    -------
+    int16 array, shape (n,)
+        As long as ``sent`` and aligned with it.
+    """
+    packets = stream.packets
+    distinct = np.flatnonzero(~packets.duplicate)
+    place = _places(stream, distinct, rows, position, rate_hz)
+    sounding = np.isin(distinct, rows, assume_unique=True)
+    sizes = np.where(sounding, packet_ticks(stream)[distinct] * rate_hz // stream.clock_rate_hz, 0)
+    played = np.ones(len(packets), np.bool_)
+    if playback is not None:
+        played[playback.discarded] = False
+    sequence, segment = packets.extended[distinct], packets.segment[distinct]
+    lost = lost_stretches(place, sizes, sequence, segment, played[distinct])
+    made = heard(sent, lost, conceals_loss and stream.encoding in CONCEALED and rate_hz == 8000)
+    noise = packets.content[distinct] == Content.COMFORT_NOISE
+    if noise.any():
+        begin, end = noise_stretches(place, sequence, segment, noise, len(sent))
+        order = np.lexsort((sequence[noise], segment[noise]))
+        made = _with_noise(made, _noises(stream, distinct[noise][order], buffers), begin, end)
+    return made
+
+
+def _places(
+    stream: Stream, distinct: NDArray[np.int64], rows: NDArray[np.int64], position: NDArray[np.int64], rate_hz: int
+) -> NDArray[np.int64]:
+    """Place of every distinct packet, audio or not, on the timeline of the audio packets."""
+    packets = stream.packets
+    if len(distinct) == len(rows):
+        return position
+    place = positions(
+        packets.media_ticks[distinct],
+        packets.time_ns[distinct],
+        stream.clock_rate_hz,
+        rate_hz,
+        packets.segment[distinct],
+    )
+    among = np.searchsorted(distinct, rows)
+    place = place - place[among[0]] + position[0] if len(rows) else place
+    # An event whose timestamp stands still for long may have moved what follows it; audio stays where it was laid.
+    place[among] = position
+    return place
+
+
+def _noises(stream: Stream, rows: NDArray[np.int64], buffers: Sequence[Octets]) -> list[ComfortNoise]:
+    packets = stream.packets
+    noises = []
+    for row in rows.tolist():
+        start = int(packets.start[row])
+        octets = buffers[packets.buffer[row]][start : start + int(packets.captured[row])].tobytes()
+        try:
+            noises.append(ComfortNoise.parse(octets))
+        except MalformedPacket:
+            noises.append(ComfortNoise(-127.0))
+    return noises
+
+
+def _with_noise(made: Samples, noises: list[ComfortNoise], begin: NDArray[np.int64], end: NDArray[np.int64]) -> Samples:
+    filled = made.copy()
+    counts = end - begin
+    wave = generate(noises, counts)
+    at = np.concatenate([[0], np.cumsum(counts)])
+    for k in range(len(noises)):
+        filled[begin[k] : end[k]] = wave[at[k] : at[k + 1]]
+    return filled

@@ -1,0 +1,100 @@
+"""A stream at the receiver's playout buffer: what was late, what the ear missed, what other buffers would have done."""
+
+from dataclasses import dataclass, replace
+
+import numpy as np
+from numpy.typing import NDArray
+
+from rtpaudit.codecs import CODECS
+from rtpaudit.media.streams import Content, Stream
+from rtpaudit.metrics.bursts import BurstGap, burst_ratio, bursts_and_gaps, loss_runs
+from rtpaudit.metrics.network import NetworkFigures
+from rtpaudit.metrics.windows import window_of
+from rtpaudit.playout.buffer import Played, play, talkspurts
+from rtpaudit.playout.what_if import WhatIf, what_if
+from rtpaudit.profile import Playout
+from rtpaudit.units import MS_PER_S, percent
+
+
+@dataclass(frozen=True, slots=True)
+class Playback:
+    """What the receiver's buffer made of a stream."""
+
+    rows: NDArray[np.int64]
+    """rows of the distinct audio packets, in order of arrival; the columns of ``played`` belong to them"""
+    played: Played
+    discarded: NDArray[np.int64]
+    """rows that came too late"""
+    discarded_per_window: NDArray[np.int64]
+    expected: int
+    burst_ratio: float
+    """of lost and discarded packets together"""
+    burst_gap: BurstGap
+    what_if: WhatIf
+    """the same arrivals at fixed buffers of other delays"""
+
+    @property
+    def discard_pct(self) -> float:
+        """Late packets of those expected. [%]"""
+        return percent(len(self.discarded), self.expected)
+
+
+def play_back(stream: Stream, network: NetworkFigures, settings: Playout, started_ns: int) -> Playback | None:
+    """Simulate the playout of a stream; None where its clock is not known or it has no audio."""
+    packets = stream.packets
+    distinct = np.flatnonzero(~packets.duplicate)
+    audio = is_audio(stream)[distinct]
+    rows = distinct[audio]
+    if not len(rows) or stream.clock_rate_hz == 0:
+        return None
+    sequence, segment = packets.extended[distinct], packets.segment[distinct]
+    time_ns, ticks = packets.time_ns[rows], packets.media_ticks[rows]
+    pause = round(settings.reset_pause_ms * stream.clock_rate_hz / MS_PER_S)
+    spurt = talkspurts(
+        sequence, segment, packets.media_ticks[distinct], packet_ticks(stream)[distinct], pause, audio=audio
+    )
+    skew = network.clock_skew_ppm
+    played = play(time_ns, ticks, spurt, stream.clock_rate_hz, settings, skew)
+    fixed = played
+    if settings.kind != "fixed":
+        fixed = play(time_ns, ticks, spurt, stream.clock_rate_hz, replace(settings, kind="fixed"), skew)
+    discarded = rows[~played.played]
+    kept = np.ones(len(packets), np.bool_)
+    kept[discarded] = False
+    place = network.sequence.place
+    if len(discarded):
+        place = place[kept[network.sequence.order]]
+    runs = loss_runs(place, network.packets_expected)
+    windows = len(network.windows.from_s)
+    return Playback(
+        rows=rows,
+        played=played,
+        discarded=discarded,
+        discarded_per_window=np.bincount(
+            window_of(packets.time_ns[discarded], started_ns, windows), minlength=windows
+        ).astype(np.int64),
+        expected=network.packets_expected,
+        burst_ratio=burst_ratio(runs),
+        burst_gap=bursts_and_gaps(runs, stream.packet_time_ms),
+        what_if=what_if(fixed.required_ns, sequence, segment, audio),
+    )
+
+
+def is_audio(stream: Stream) -> NDArray[np.bool_]:
+    """Which packets carry sound: neither telephone events nor comfort noise."""
+    content = stream.packets.content
+    return np.asarray((content == Content.AUDIO) | (content == Content.REDUNDANT))
+
+
+def packet_ticks(stream: Stream) -> NDArray[np.int64]:
+    """Media time that each packet carries, by its length where that tells, else that of most packets. [ticks]"""
+    packets = stream.packets
+    usual = 0 if np.isnan(stream.packet_time_ms) else round(stream.packet_time_ms * stream.clock_rate_hz / MS_PER_S)
+    ticks = np.full(len(packets), usual, np.int64)
+    for number, encoding in stream.encodings.items():
+        codec = CODECS.get(encoding.name)
+        if codec is not None and codec.octets_per_block and not stream.encrypted:
+            mine = packets.payload_type == number
+            samples = packets.length[mine] // codec.octets_per_block * codec.samples_per_block
+            ticks[mine] = samples * encoding.clock_rate_hz // codec.sampling_rate(encoding.clock_rate_hz)
+    return ticks
