@@ -3,7 +3,10 @@
 Importing this module imports numba; only modules that hold kernels do so.
 """
 
+import sys
 from collections.abc import Callable
+from contextlib import suppress
+from types import ModuleType
 from typing import Any, TypeVar, cast
 
 from numba import njit
@@ -40,3 +43,21 @@ def on_first_compilation(announce: Callable[[], None]) -> None:
 def inlined(function: F) -> F:
     """A small part of a kernel, compiled into each kernel that calls it and not on its own."""
     return cast(F, njit(nogil=True, error_model="numpy", forceinline=True)(function))
+
+
+def load_without_extras() -> None:
+    """Load the rest of numba without two packages that it looks for and no kernel uses; they take 0.2 s.
+
+    numba loads that rest with the first kernel anyway, and gets along where the two are not installed. For a process
+    of our own: elsewhere somebody may import them at the same moment.
+    """
+    absent = cast(ModuleType, None)
+    extras = [name for name in ("scipy.linalg", "cffi") if name not in sys.modules]
+    sys.modules.update(dict.fromkeys(extras, absent))
+    try:
+        with suppress(ImportError):
+            import numba.core.typing.cffi_utils
+            import numba.np.arraymath  # noqa: F401
+    finally:
+        for name in extras:
+            del sys.modules[name]

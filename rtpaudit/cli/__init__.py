@@ -4,18 +4,19 @@ import os
 import signal
 import sys
 from collections.abc import Sequence
-from typing import Annotated, Any, NoReturn
+from typing import Annotated, Any
 
 import typer
 
 from rtpaudit import __version__
 from rtpaudit.cli import demo, explain, triage
+from rtpaudit.cli.start import start
 from rtpaudit.cli.terminal import complain, say
 from rtpaudit.errors import RtpAuditError
 
 DONE, LIMIT_BROKEN, UNUSABLE = 0, 1, 2
-# As a shell counts a program that a signal ended.
-INTERRUPTED, TERMINATED = 128 + signal.SIGINT, 128 + signal.SIGTERM
+INTERRUPTED = 128 + signal.SIGINT
+"""as a shell counts a program that a signal ended"""
 
 DEBUG = "RTPAUDIT_DEBUG"
 
@@ -45,7 +46,7 @@ def _rtpaudit(
 def main(arguments: Sequence[str] | None = None) -> int:
     """Run a command line; the exit status: 0 done, 1 done but a limit of the user's is broken, 2 unusable input."""
     if arguments is None:
-        _prepare()
+        start()
         arguments = sys.argv[1:]
     try:
         status: Any = app(args=list(arguments), prog_name="rtpaudit", standalone_mode=False)
@@ -72,15 +73,3 @@ def main(arguments: Sequence[str] | None = None) -> int:
             f"a fault of rtpaudit itself: {type(fault).__name__}: {fault}; set {DEBUG}=1 to see where, and report it"
         )
     return UNUSABLE
-
-
-def _prepare() -> None:
-    """Ready a process of our own: print any text on any terminal, and clean up when told to end."""
-    for stream in (sys.stdout, sys.stderr):
-        if hasattr(stream, "reconfigure"):
-            stream.reconfigure(errors="replace")
-    signal.signal(signal.SIGTERM, _terminate)
-
-
-def _terminate(_number: int, _frame: Any) -> NoReturn:
-    raise SystemExit(TERMINATED)

@@ -5,6 +5,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING
 
 from rtpaudit.cli import options
+from rtpaudit.cli.start import settle
 from rtpaudit.cli.terminal import Bar, complain, say, width
 
 if TYPE_CHECKING:
@@ -60,9 +61,11 @@ def _audit(
     bar: Bar,
     quiet: bool,
 ) -> "Audit":
-    from rtpaudit.kernels import on_first_compilation
+    from rtpaudit.kernels import load_without_extras, on_first_compilation
     from rtpaudit.walk import audit
 
+    load_without_extras()
+    settle()
     if not quiet:
         on_first_compilation(lambda: complain(COMPILING))
     return audit(*captures, profile=profile, payload_types=payload_types, delay_ms=delay_ms, progress=bar.reading)

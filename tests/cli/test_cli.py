@@ -1,7 +1,6 @@
 """The command line: exit statuses, one line for what went wrong, never a traceback."""
 
 import os
-import signal
 import subprocess
 import sys
 import time
@@ -9,7 +8,7 @@ from pathlib import Path
 
 import pytest
 
-from rtpaudit.cli import DEBUG, _prepare, main
+from rtpaudit.cli import DEBUG, main
 from rtpaudit.errors import UnreadableCapture, UnusableOutput, UnusableProfile
 from tests.cli.conftest import Run
 
@@ -153,17 +152,6 @@ def test_any_text_can_be_shown_where_only_ascii_can() -> None:
     result = command("explain", "zz→ü", PYTHONIOENCODING="ascii")
     assert result.returncode == 2
     assert one_line(result.stderr)
-
-
-def test_a_request_to_end_unwinds_so_that_nothing_half_written_stays() -> None:
-    before = signal.getsignal(signal.SIGTERM)
-    try:
-        _prepare()
-        with pytest.raises(SystemExit) as ended:
-            os.kill(os.getpid(), signal.SIGTERM)
-    finally:
-        signal.signal(signal.SIGTERM, before)
-    assert ended.value.code == 128 + signal.SIGTERM
 
 
 def test_help_comes_at_once() -> None:
