@@ -65,7 +65,7 @@ def write_wav(path: Path, samples: Samples, rate_hz: int) -> None:
                 file.write(samples[begin : begin + FRAMES_AT_ONCE])
         partial.replace(path)
     except (OSError, soundfile.LibsndfileError) as fault:
-        raise UnusableOutput(f"{path}: cannot be written: {fault}; is the disk full?") from fault
+        raise UnusableOutput(f"{path}: cannot be written: {str(fault).rstrip('.')}; is the disk full?") from fault
     finally:
         partial.unlink(missing_ok=True)
 

@@ -1,5 +1,7 @@
 """WAV files: what the payloads say, to the sample, under names made of ids."""
 
+import resource
+import signal
 from pathlib import Path
 
 import numpy as np
@@ -93,3 +95,15 @@ def test_progress_counts_calls(tmp_path: Path) -> None:
     said: list[tuple[int, int]] = []
     write_audio(tmp_path, made.assessment().calls, Tones(), lambda done, total: said.append((done, total)))
     assert said == [(1, 2), (2, 2)]
+
+
+def test_a_full_disk_is_one_sentence_and_leaves_nothing(tmp_path: Path) -> None:
+    limits, handler = resource.getrlimit(resource.RLIMIT_FSIZE), signal.signal(signal.SIGXFSZ, signal.SIG_IGN)
+    try:
+        resource.setrlimit(resource.RLIMIT_FSIZE, (1000, limits[1]))
+        with pytest.raises(UnusableOutput, match="is the disk full"):
+            write_wav(tmp_path / "one.wav", RAMP, 8000)
+    finally:
+        resource.setrlimit(resource.RLIMIT_FSIZE, limits)
+        signal.signal(signal.SIGXFSZ, handler)
+    assert list(tmp_path.iterdir()) == []
