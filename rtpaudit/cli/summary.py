@@ -33,14 +33,10 @@ def as_text(written: Written, assessment: Assessment, zone: tzinfo | None, colum
     calls = worst_first(written.tables["calls"])
     streams = written.tables["streams"].set_index("stream")
     sides = {one.id: (one.from_callee, one.from_caller) for one in assessment.calls}
-    paragraphs = [_heading(written, zone)]
-    if len(calls):
-        paragraphs.append(_overview(calls))
-    shown = [_call(call, sides[call.call], streams, zone, columns) for _, call in calls[:LISTED_CALLS].iterrows()]
-    rest = calls[LISTED_CALLS:]
-    wrapped = [fill(text, columns) for text in paragraphs]
-    closing = [fill(text, columns) for text in [*_rest(rest), *_notes(written, streams), _place(written), MIND]]
-    return "\n".join([*wrapped, *(f"\n{one}" for one in shown), "", *closing])
+    blocks = [_call(call, sides[call.call], streams, zone, columns) for _, call in calls[:LISTED_CALLS].iterrows()]
+    notes = [*_rest(calls[LISTED_CALLS:]), *_notes(written, streams), *_meaning(calls), _place(written), MIND]
+    opening, closing = ("\n".join(fill(one, columns) for one in part) for part in (_heading(written, zone), notes))
+    return "\n\n".join([opening, *blocks, closing])
 
 
 def as_json(written: Written, limit: float | None, broken: Mapping[str, float]) -> str:
@@ -74,27 +70,33 @@ def figure(value: float) -> str:
     return f"{value:,.0f}" if abs(value) >= 100 else f"{value:.3g}"
 
 
-def _heading(written: Written, zone: tzinfo | None) -> str:
-    names = ", ".join(written.captures[:LISTED_CAPTURES])
+def _heading(written: Written, zone: tzinfo | None) -> list[str]:
+    names = visible(", ".join(written.captures[:LISTED_CAPTURES]))
     if len(written.captures) > LISTED_CAPTURES:
         names += f" and {len(written.captures) - LISTED_CAPTURES} more"
     streams, calls = written.tables["streams"], written.tables["calls"]
     if not len(streams):
-        return f"{visible(names)}: no stream of RTP was found."
+        return [f"{names}: no stream of RTP was found."]
+    packets = int(streams.packets_captured.sum())
+    counts = [_many(len(calls), "call"), _many(len(streams), "stream"), _many(packets, "packet")]
     begin, end = _local(streams.started.min(), zone), _local(streams.ended.max(), zone)
     until = f"{end:%H:%M:%S}" if begin.date() == end.date() else f"{end:%Y-%m-%d %H:%M:%S}"
-    counts = f"{_many(len(calls), 'call')}, {_many(len(streams), 'stream')}"
-    packets = _many(int(streams.packets_captured.sum()), "packet")
-    return f"{visible(names)}: {counts}, {packets}, {begin:%Y-%m-%d %H:%M:%S} to {until} {_zone_name(begin, zone)}."
+    when = f"{begin:%Y-%m-%d %H:%M:%S} to {until} {_zone_name(begin, zone)}."
+    return [f"{names}: {', '.join(counts)}", when + _bands(calls)]
 
 
-def _overview(calls: DataFrame) -> str:
+def _bands(calls: DataFrame) -> str:
     """How many calls lie in which band, where there are more than one sees at a glance."""
     if len(calls) <= LISTED_CALLS:
-        return "Worst first. R by ITU-T G.107: 100 at best, below 50 not recommended."
-    bands = calls.sort_values("r_factor", ascending=False, kind="stable").quality_band.fillna("not rated")
-    counts = ", ".join(f"{count} {band}" for band, count in bands.value_counts(sort=False).items())
-    return f"By the worse ear: {counts}. Worst first; R by ITU-T G.107."
+        return " Worst first:" if len(calls) > 1 else ""
+    best_first = calls.sort_values("r_factor", ascending=False, kind="stable")
+    counts = best_first.quality_band.fillna("not rated").value_counts(sort=False)
+    return f" By the worse ear {', '.join(f'{count} {band}' for band, count in counts.items())}. Worst first:"
+
+
+def _meaning(calls: DataFrame) -> list[str]:
+    rated = calls.r_factor.notna().any()
+    return ["R is the rating by ITU-T G.107: 100 at best, below 50 not recommended."] if rated else []
 
 
 def _call(
@@ -103,28 +105,30 @@ def _call(
     parties = f"{visible(call.caller)} → {visible(call.callee)}"
     when = f"{_local(call.started, zone):%H:%M:%S}"
     first = f"{call.call}  {when}  {parties}  {_length(call.duration_s)}  {visible(_or(call.encoding, ''))}".rstrip()
-    ears = zip(("caller", "callee"), sides, (call.caller_hears_r, call.callee_hears_r), strict=True)
-    lines = [_ear(name, streams.loc[[one.id for one in side]], rating) for name, side, rating in ears]
-    title = fill(first, columns, subsequent_indent=INDENT)
-    return "\n".join(
-        [bold(title), *(fill(one, columns, initial_indent=INDENT, subsequent_indent=INDENT) for one in lines)]
-    )
+    lines = [first]
+    reasons: list[str] = []
+    for name, side, rating in zip(("caller", "callee"), sides, (call.caller_hears_r, call.callee_hears_r), strict=True):
+        reaching = streams.loc[[one.id for one in side]]
+        lines.append(f"{INDENT}{name} hears  {_ear(reaching, rating)}")
+        reasons += reaching.rating_note[reaching.r_factor.isna()].dropna().tolist()
+    lines += [f"{INDENT}not rated: {reason}" for reason in dict.fromkeys(reasons)]
+    title, *rest = [fill(line, columns, subsequent_indent=INDENT) for line in lines]
+    return "\n".join([bold(title), *rest])
 
 
-def _ear(name: str, streams: DataFrame, rating: float) -> str:
-    """What reached one ear: the rating and its band, then what the network did."""
+def _ear(streams: DataFrame, rating: float) -> str:
+    """What reached one ear: the rating and its band, then what the network and the buffer did."""
     if not len(streams):
-        return f"{name} hears  nothing: no stream goes this way"
-    if rating == rating:
-        heard = f"R {figure(rating)} {quality_band(float(rating))}"
-    else:
-        notes = streams.rating_note.dropna()
-        heard = f"not rated: {notes.iloc[0]}" if len(notes) else "not rated"
-    lost, expected = int(streams.packets_lost.sum()), int(streams.packets_expected.sum())
-    network = [f"{figure(100 * lost / expected)} % lost" if lost else "nothing lost"]
+        return "nothing: no stream goes this way"
+    heard = f"R {figure(rating)} {quality_band(float(rating))}" if rating == rating else "not rated"
+    expected = int(streams.packets_expected.sum())
+    lost, late = int(streams.packets_lost.sum()), int(streams.packets_discarded.sum())
+    network = [
+        f"{figure(100 * count / expected)} % {what}" for count, what in ((lost, "lost"), (late, "late")) if count
+    ]
     if streams.jitter_ms.notna().any():
         network.append(f"jitter {figure(streams.jitter_ms.max())} ms")
-    return f"{name} hears  {heard:<21}  {', '.join(network)}"
+    return f"{heard:<21}  {', '.join(network if lost or late else ['nothing lost', *network])}"
 
 
 def _rest(rest: DataFrame) -> list[str]:

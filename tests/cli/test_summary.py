@@ -23,8 +23,9 @@ def summary(place: Path, found: Assessment | None = None, zone: tzinfo = UTC, co
 def calls(*ratings: float) -> Assessment:
     found = Assessment(captures=["a.pcap"])
     for number, rating in enumerate(ratings, start=1):
-        there = made.stream(f"s{2 * number - 1:02d}", f"c{number:02d}", rating_note="no values for opus")
-        back = made.stream(f"s{2 * number:02d}", f"c{number:02d}", **made.mirrored())
+        note = "" if rating == rating else "no values for opus"
+        there = made.stream(f"s{2 * number - 1:02d}", f"c{number:02d}", r_factor=rating, rating_note=note)
+        back = made.stream(f"s{2 * number:02d}", f"c{number:02d}", **made.mirrored(r_factor=93.2))
         found.streams += [there, back]
         found.calls.append(made.call(f"c{number:02d}", [there], [back], r_factor=rating, callee_hears_r=rating,
                                      caller_hears_r=93.2, quality_band="medium", loss_pct=0.0))  # fmt: skip
@@ -40,13 +41,10 @@ def test_the_worst_call_comes_first_with_each_ear(tmp_path: Path) -> None:
 
 
 def test_the_heading_says_what_was_audited_and_in_which_zone(tmp_path: Path) -> None:
-    first = " ".join(summary(tmp_path).split())
-    assert first.startswith(
-        "complaint.pcap: 2 calls, 5 streams, 0 packets, 2023-11-14 22:13:20 to 22:14:31 UTC."
-    )  # fmt: skip
-    assert "2023-11-15 07:13:20 to 07:14:31 Asia/Tokyo" in " ".join(
-        summary(tmp_path, zone=ZoneInfo("Asia/Tokyo")).split()
-    )
+    lines = summary(tmp_path).splitlines()
+    assert lines[0] == "complaint.pcap: 2 calls, 5 streams, 0 packets"
+    assert lines[1] == "2023-11-14 22:13:20 to 22:14:31 UTC. Worst first:"
+    assert "2023-11-15 07:13:20 to 07:14:31 Asia/Tokyo." in summary(tmp_path, zone=ZoneInfo("Asia/Tokyo"))
 
 
 @pytest.mark.parametrize("columns", [60, 80, 100])
@@ -66,7 +64,7 @@ def test_the_answer_stands_in_the_first_screenful(tmp_path: Path) -> None:
 
 def test_many_calls_are_counted_by_band(tmp_path: Path) -> None:
     found = calls(*[75.0] * 7)
-    assert "By the worse ear: 7 medium." in " ".join(summary(tmp_path, found).split())
+    assert "By the worse ear 7 medium." in " ".join(summary(tmp_path, found).split())
 
 
 def test_a_direction_without_a_stream_is_nothing_and_not_a_rating(tmp_path: Path) -> None:
@@ -78,7 +76,15 @@ def test_a_direction_without_a_stream_is_nothing_and_not_a_rating(tmp_path: Path
 
 
 def test_what_cannot_be_rated_says_why(tmp_path: Path) -> None:
-    assert "callee hears  not rated: no values for opus" in summary(tmp_path, calls(float("nan")))
+    text = summary(tmp_path, calls(float("nan")))
+    assert "callee hears  not rated  " in text
+    assert "not rated: no values for opus" in text
+
+
+def test_packets_that_came_too_late_are_told_beside_the_lost_ones(tmp_path: Path) -> None:
+    there = made.stream("s01", "c01", packets_expected=1000, packets_lost=12, packets_discarded=25, jitter_ms=14.46)
+    found = Assessment(captures=["a.pcap"], streams=[there], calls=[made.call("c01", [there], [], callee_hears_r=60.0)])
+    assert "callee hears  R 60 low               1.2 % lost, 2.5 % late, jitter 14.5 ms" in summary(tmp_path, found)
 
 
 def test_calls_without_a_rating_follow_by_loss(tmp_path: Path) -> None:
