@@ -156,6 +156,8 @@ class Fragments:
         self._give_up_old(arrival.time_ns)
         datagram = self.opened.get(fragment.key)
         if datagram is None:
+            if len(self.opened) >= MAX_OPEN:
+                self._give_up(next(iter(self.opened)))
             datagram = self.opened[fragment.key] = _Open(arrival)
             self.held += datagram.held
         held = datagram.held
@@ -179,8 +181,7 @@ class Fragments:
     def _give_up_old(self, now_ns: int) -> None:
         while self.opened:
             key, oldest = next(iter(self.opened.items()))
-            fits = len(self.opened) < MAX_OPEN and self.held < MAX_OCTETS
-            if fits and now_ns - oldest.began.time_ns <= MAX_AGE_NS:
+            if self.held < MAX_OCTETS and now_ns - oldest.began.time_ns <= MAX_AGE_NS:
                 return
             self._give_up(key)
 

@@ -8,6 +8,7 @@ from rtpaudit.decode.layers import (
     GRE,
     GTP_U,
     ICMP,
+    LAST_LINK,
     MALFORMED,
     PACKET,
     RARE,
@@ -126,7 +127,7 @@ def _udp(row: Row) -> None:
 
 @kernel
 def transport_headers(rows: Rows) -> int:
-    """Turn every row at UDP, TCP or ICMP into a packet; how many are at a tunnel now, or to be treated aside."""
+    """Turn every row at UDP, TCP or ICMP into a packet; how many are at a tunnel or a label, or to be treated aside."""
     aside = 0
     for index in range(len(rows)):
         row = rows[index]
@@ -141,6 +142,6 @@ def transport_headers(rows: Rows) -> int:
             else:
                 row.kind = TCP_SEGMENT if row.layer == TCP else ICMP_MESSAGE
                 row.layer = PACKET
-        if GRE <= row.layer <= RARE:
+        if row.layer <= LAST_LINK or GRE <= row.layer <= RARE:
             aside += 1
     return aside

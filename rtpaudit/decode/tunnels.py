@@ -17,6 +17,7 @@ from rtpaudit.decode.layers import (
     GENEVE,
     GRE,
     GTP_U,
+    LAST_LINK,
     LLC,
     MALFORMED,
     MAX_DEPTH,
@@ -38,12 +39,12 @@ HEADER = 8
 
 
 def enter_tunnels(rows: Rows, octets: Octets, base: int) -> bool:
-    """Move every row at a tunnel header to what the tunnel carries; whether there was any."""
+    """Move every row at a tunnel header to what the tunnel carries; whether any row has headers left to take off."""
     layer = rows["layer"]
     inside = np.flatnonzero((layer >= GRE) & (layer <= GTP_U))
     for tunnel, read in TUNNELS.items():
         _enter(rows, inside[layer[inside] == tunnel], read, octets, base)
-    return len(inside) > 0
+    return len(inside) > 0 or bool((layer <= LAST_LINK).any())
 
 
 def _enter(rows: Rows, chosen: NDArray[np.intp], read: Callable[["Header"], Inner], octets: Octets, base: int) -> None:
