@@ -41,7 +41,7 @@ class SoundSource:
     def __init__(
         self, buffers: Sequence[Sequence[Octets]], streams: Sequence[AssessedStream], conceals_loss: bool = True
     ) -> None:
-        self._buffers = buffers
+        self.buffers = buffers
         self._conceals_loss = conceals_loss
         self._streams = {one.id: one for one in streams}
 
@@ -54,7 +54,7 @@ class SoundSource:
         """Every received payload on the RTP timeline, silence where lost; and the sampling rate. MissingCodec."""
         stream = self._streams[stream_id].stream
         laid = lay_out(stream)
-        return sent_samples(stream, laid, self._buffers[stream.recording]), laid.rate_hz
+        return sent_samples(stream, laid, self.buffers[stream.recording]), laid.rate_hz
 
     def heard(self, stream_id: str) -> tuple[Samples, int]:
         """The same after the playout buffer and concealment, as long as sent. MissingCodec."""
@@ -63,7 +63,7 @@ class SoundSource:
         return self._heard(one, laid), laid.rate_hz
 
     def _heard(self, one: AssessedStream, laid: Laid) -> Samples:
-        buffers = self._buffers[one.stream.recording]
+        buffers = self.buffers[one.stream.recording]
         sent = sent_samples(one.stream, laid, buffers)
         return heard_samples(
             one.stream, one.playback, sent, laid.rows, laid.position, laid.rate_hz, buffers, self._conceals_loss

@@ -5,6 +5,7 @@ from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, field
 
 from rtpaudit.media.streams import Stream
+from rtpaudit.signalling.calls import MediaTerm, SipCall
 
 FOLLOWS_WITHIN_NS = 10_000_000_000
 """Streams on one pair of addresses that follow each other within 10 s belong to one call."""
@@ -22,6 +23,10 @@ class Call:
     ended_ns: int
     from_caller: list[Stream] = field(default_factory=list)
     from_callee: list[Stream] = field(default_factory=list)
+    signalled: SipCall | None = None
+    """what the endpoints said of it"""
+    unseen: list[MediaTerm] = field(default_factory=list)
+    """audio that a side asked for and that never came"""
 
     @property
     def streams(self) -> list[Stream]:
