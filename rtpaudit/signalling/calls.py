@@ -36,6 +36,8 @@ class SignallingMessage:
     description: SessionDescription | None = None
     repeated: bool = False
     """a retransmission of a message seen before between the same two addresses"""
+    call: int | None = None
+    """place of its call among those of the recording, None where it belongs to none"""
 
     @property
     def line(self) -> str:

@@ -3,6 +3,7 @@
 from dataclasses import dataclass, field
 
 from rtpaudit.signalling.framing import FramedMessage, MessageStream
+from rtpaudit.signalling.grammar import METHODS
 from rtpaudit.signalling.sip import looks_like_sip
 from rtpaudit.signalling.websocket import WebSocketStream, first_payload, handshake_end
 
@@ -13,7 +14,16 @@ ENOUGH_OCTETS = 16
 """so many are needed to tell a handshake or a frame; no message is shorter"""
 
 _FIRST_OCTETS = 4200
+_HANDSHAKES = (b"GET ", b"HTTP/1.1 101")
 _TLS_RECORDS = (b"\x14\x03", b"\x15\x03", b"\x16\x03", b"\x17\x03")
+
+_BEGINS = (b"SIP/2.0 ", *_HANDSHAKES, *(f"{method} ".encode() for method in sorted(METHODS)))
+
+
+def may_carry_sip(first_octets: bytes) -> bool:
+    """Whether a direction that begins so is worth following; few octets are enough."""
+    begin = (first_payload(first_octets) or first_octets).lstrip(b"\r\n")[:16].upper()
+    return any(begin.startswith(word[: len(begin)]) for word in _BEGINS) if begin else False
 
 
 @dataclass(slots=True)
@@ -39,6 +49,9 @@ class Connection:
         """Messages that are complete with this chunk."""
         if self.dropped or not octets:
             return []
+        if self._web is not None and octets.startswith(_HANDSHAKES):
+            # Another connection between the same ports.
+            self._web, self._recognised = None, False
         if not self._recognised:
             self._first += octets
             if len(self._first) < ENOUGH_OCTETS:
@@ -67,7 +80,7 @@ class Connection:
         self._recognised = True
         if first[:2] in _TLS_RECORDS:
             self._drop()
-        elif first.startswith((b"GET ", b"HTTP/1.1 101")):
+        elif first.startswith(_HANDSHAKES):
             self._handshake = bytearray()
         elif not looks_like_sip(first) and looks_like_sip(first_payload(first)):
             # The capture began behind the handshake.

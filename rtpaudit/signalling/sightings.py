@@ -6,6 +6,7 @@ from dataclasses import dataclass
 from rtpaudit.errors import MalformedPacket
 from rtpaudit.signalling.calls import SignallingMessage
 from rtpaudit.signalling.grammar import branch_of, printable, tag_of
+from rtpaudit.signalling.quality_reports import CONTENT_TYPE, QualityReport, parse_quality_report
 from rtpaudit.signalling.sdp import SessionDescription, parse_description
 from rtpaudit.signalling.sip import SipMessage
 
@@ -67,6 +68,8 @@ class Reader:
     def __init__(self) -> None:
         self._strings: dict[str, str] = {}
         self._descriptions: dict[bytes, SessionDescription] = {}
+        self._seen: set[int] = set()
+        self.reports: list[QualityReport] = []
 
     def row(self, message: SipMessage, row: SignallingMessage) -> SignallingMessage:
         """Fills in what the message says of itself."""
@@ -77,11 +80,16 @@ class Reader:
         row.status_code = message.status_code
         row.target = self._once((message.header("refer-to") or message.request_uri)[:MAX_SHOWN])
         row.note = self._once(_note(message)[:MAX_SHOWN])
+        # Of the header fields only Via and To differ where the rest is the same and the message is another.
+        said = (row.message, row.cseq, row.call_id, message.header("via"), message.header("to"), message.body)
+        key = hash((row.source, row.destination, *said))
+        row.repeated = key in self._seen
+        self._seen.add(key)
         return row
 
     def sighting(self, message: SipMessage, row: SignallingMessage, faults: list[str]) -> Sighting | None:
         """The sighting of a message that may belong to a call, None for any other; adds to the faults."""
-        row.description, fragment_status = self._bodies(message, faults)
+        row.description, fragment_status = self._bodies(message, row, faults)
         if message.cseq_method not in CALL_METHODS:
             return None
         from_value, to_value = self._once(message.header("from")), self._once(message.header("to"))
@@ -101,15 +109,19 @@ class Reader:
             fragment_status=fragment_status,
         )
 
-    def _bodies(self, message: SipMessage, faults: list[str]) -> tuple[SessionDescription | None, int | None]:
+    def _bodies(
+        self, message: SipMessage, row: SignallingMessage, faults: list[str]
+    ) -> tuple[SessionDescription | None, int | None]:
         description, status = None, None
         for part in message.parts() if message.body else ():
-            if part.content_type == "application/sdp" and description is None:
-                try:
+            try:
+                if part.content_type == "application/sdp" and description is None:
                     description = self._description(part.octets)
-                except MalformedPacket as error:
-                    faults.append(str(error))
-            elif part.content_type.startswith("message/sipfrag"):
+                elif part.content_type == CONTENT_TYPE and not row.repeated:
+                    self.reports.append(parse_quality_report(part.octets, row.time_ns, row.source))
+            except MalformedPacket as error:
+                faults.append(str(error))
+            if part.content_type.startswith("message/sipfrag"):
                 found = _STATUS_OF_FRAGMENT.match(part.octets)
                 status = int(found[1]) if found else None
         return description, status
