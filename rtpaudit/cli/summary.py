@@ -91,7 +91,7 @@ def _bands(calls: DataFrame) -> str:
         return " Worst first:" if len(calls) > 1 else ""
     best_first = calls.sort_values("r_factor", ascending=False, kind="stable")
     counts = best_first.quality_band.fillna("not rated").value_counts(sort=False)
-    return f" By the worse ear {', '.join(f'{count} {band}' for band, count in counts.items())}. Worst first:"
+    return f" By the worse ear {', '.join(f'{count:,} {band}' for band, count in counts.items())}. Worst first:"
 
 
 def _meaning(calls: DataFrame) -> list[str]:

@@ -10,6 +10,7 @@ import base64
 import hmac
 import re
 import secrets
+from bisect import insort
 from collections.abc import Callable, Mapping, Sequence
 from ipaddress import ip_address
 from typing import TYPE_CHECKING
@@ -57,6 +58,7 @@ class Pseudonyms:
         self._key = key
         self._files: dict[str, str] = {}
         self._known: dict[str, str] = {}
+        self._odd: list[str] = []
         for name in captures:
             self.file(name)
 
@@ -87,19 +89,16 @@ class Pseudonyms:
 
     def file(self, name: str) -> str:
         """Number of a capture, as file names are often made of who complained."""
-        number = self._files.setdefault(name, f"capture-{len(self._files) + 1}")
-        return self._known.setdefault(name, number)
+        if name not in self._files:
+            self._files[name] = f"capture-{len(self._files) + 1}"
+            self._learn(name, self._files[name])
+        return self._files[name]
 
     def words(self, text: str) -> str:
         """A sentence in which addresses, and names met before, are replaced."""
-        for name in self._odd_names():
+        for name in self._odd:
             text = text.replace(name, self._known[name])
         return _ADDRESS.sub(lambda found: self._address(found[0]), _WORD.sub(lambda found: self._word(found[0]), text))
-
-    def _odd_names(self) -> list[str]:
-        """Names with spaces or signs in them, which are more than one word of a sentence; the longest first."""
-        odd = [name for name in self._known if len(name) > 2 and not _WORD.fullmatch(name)]
-        return sorted(odd, key=len, reverse=True)
 
     def _word(self, word: str) -> str:
         if word.isdigit() and len(word) < _SHORTEST_NUMBER:
@@ -113,7 +112,15 @@ class Pseudonyms:
             return text
 
     def _remembered(self, kind: str, name: str) -> str:
-        return self._known.setdefault(name, self._keyed(kind, name))
+        if name not in self._known:
+            self._learn(name, self._keyed(kind, name))
+        return self._known[name]
+
+    def _learn(self, name: str, pseudonym: str) -> None:
+        self._known[name] = pseudonym
+        # Names with spaces or signs are more than one word of a sentence; the longest first, as one may hold another.
+        if len(name) > 2 and not _WORD.fullmatch(name):
+            insort(self._odd, name, key=lambda one: -len(one))
 
     def _keyed(self, kind: str, name: str) -> str:
         digest = hmac.digest(self._key, name.encode("utf-8", "replace"), "sha256")
