@@ -56,3 +56,10 @@ def through(law, samples):
 
     encode, decode = {"PCMU": (g711.encode_pcmu, g711.decode_pcmu), "PCMA": (g711.encode_pcma, g711.decode_pcma)}[law]
     return decode(encode(samples))
+
+
+def packets(octets, size=160):
+    """Octets cut into payloads: (octets, start, length, ticks)."""
+    count = len(octets) // size
+    start = np.arange(count, dtype=np.int64) * size
+    return octets[: count * size], start, np.full(count, size, np.int32), start.copy()
