@@ -16,11 +16,14 @@ from rtpaudit.capture import open_recordings
 from rtpaudit.capture.frames import Damage, Octets
 from rtpaudit.decode import Decoder
 from rtpaudit.errors import UnusableArguments
-from rtpaudit.media.calls import pair_streams
+from rtpaudit.media.agreed import Agreed
+from rtpaudit.media.calls import Call
 from rtpaudit.media.find import find_streams
+from rtpaudit.media.join import join
 from rtpaudit.media.rtp import RtpCollector
 from rtpaudit.media.streams import Stream
 from rtpaudit.profile import Profile
+from rtpaudit.signalling.collector import Signalling, SignallingCollector
 from rtpaudit.signalling.payload_types import Encoding
 
 if TYPE_CHECKING:
@@ -38,6 +41,8 @@ class Heard:
     """What one recording brought."""
 
     streams: list[Stream]
+    calls: list[Call]
+    signalling: Signalling
     buffers: list[Octets]
     damage: list[Damage]
 
@@ -55,7 +60,7 @@ class Audit:
         """Every table by name."""
         from rtpaudit.report.tables import build_tables
 
-        return build_tables(self.assessment)
+        return build_tables(self.assessment, signalling=self.assessment.messages, events=self.assessment.events)
 
     def __getattr__(self, name: str) -> Any:
         # Tables are attributes: audit.calls, audit.streams and so on, by the list of columns.py.
@@ -126,10 +131,17 @@ def audit(
         heard.append(_listen_to(recording, number, payload_types or {}, _from(progress, done, total)))
     streams = [stream for one in heard for stream in one.streams]
     streams.sort(key=lambda stream: int(stream.packets.time_ns[0]))
-    damage = [row for one in heard for row in one.damage]
-    names = [file.name for recording in recordings for file in recording.files]
+    calls = sorted((call for one in heard for call in one.calls), key=lambda call: call.started_ns)
     buffers = [one.buffers for one in heard]
-    assessment = assess(streams, pair_streams(streams), chosen, names, damage)
+    assessment = assess(
+        streams,
+        calls,
+        chosen,
+        buffers=buffers,
+        messages=[message for one in heard for message in one.signalling.messages],
+        captures=[file.name for recording in recordings for file in recording.files],
+        damage=[row for one in heard for row in one.damage],
+    )
     return Audit(assessment, SoundSource(buffers, assessment.streams, chosen.conceals_loss), chosen)
 
 
@@ -145,7 +157,7 @@ def _listen_to(
     recording: "Recording", number: int, given: Mapping[int, Encoding], progress: Callable[[int], None]
 ) -> Heard:
     """Walk one recording from its frames to its streams."""
-    decoder, collector = Decoder(), RtpCollector()
+    decoder, collector, signalling = Decoder(), RtpCollector(), SignallingCollector()
     buffers: list[Octets] = []
     names: list[str] = []
 
@@ -158,6 +170,7 @@ def _listen_to(
                 collector.add(packets, len(buffers) - 1)
             else:
                 collector.add(packets, here)
+            signalling.add(packets, decoder.flows, name)
 
     passed = 0
     for file in recording.files:
@@ -170,6 +183,16 @@ def _listen_to(
         passed += len(file.octets)
         progress(passed)
     take(decoder.finish(), None, recording.name)
-    damage = [*recording.damage, *decoder.damage]
-    streams = find_streams(collector, decoder.flows, buffers, recording=number, captures=names, given=given)
-    return Heard(streams, buffers, damage)
+    said = signalling.finish()
+    agreed = Agreed(said.calls, said.descriptions)
+    streams = find_streams(
+        collector,
+        decoder.flows,
+        buffers,
+        recording=number,
+        captures=names,
+        given=given,
+        offered=agreed.offered(decoder.flows),
+    )
+    calls = join(streams, said.calls, agreed, recording.name)
+    return Heard(streams, calls, said, buffers, [*recording.damage, *decoder.damage, *said.damage])

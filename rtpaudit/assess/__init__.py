@@ -5,25 +5,33 @@ from collections.abc import Sequence
 import numpy as np
 
 from rtpaudit.assess.call import assess_call
+from rtpaudit.assess.counted import counted_parts
 from rtpaudit.assess.rating import Rated, budgets, curves, rate, rate_windows
-from rtpaudit.assess.results import AssessedStream, Assessment, WindowColumns
+from rtpaudit.assess.results import AssessedCall, AssessedStream, Assessment, WindowColumns
+from rtpaudit.assess.rows import SignallingRow, event_rows, signalling_row
 from rtpaudit.assess.stream import Measured, measure
-from rtpaudit.capture.frames import Damage
+from rtpaudit.capture.frames import Damage, Octets
 from rtpaudit.media.calls import Call
+from rtpaudit.media.events import telephone_events
+from rtpaudit.media.join import conversations
 from rtpaudit.media.streams import Stream
 from rtpaudit.profile import Profile
+from rtpaudit.signalling.calls import SignallingMessage
 
 
 def assess(
     streams: Sequence[Stream],
     calls: Sequence[Call],
     profile: Profile,
+    buffers: Sequence[Sequence[Octets]] = (),
+    messages: Sequence[SignallingMessage] = (),
     captures: Sequence[str] = (),
     damage: Sequence[Damage] = (),
 ) -> Assessment:
     """Measure and rate every stream, then every call.
 
-    ``streams`` come in the order in which they are numbered, and so do ``calls``, which refer to them.
+    ``streams`` come in the order in which they are numbered, and so do ``calls``, which refer to them. ``buffers`` are
+    the octets of each recording, ``messages`` what was said in all of them.
     """
     measured = [measure(stream, profile) for stream in streams]
     rated = rate(streams, [one.path(profile) for one in measured], profile)
@@ -34,7 +42,7 @@ def assess(
         [one.network.packets_lost for one in measured],
         [len(one.playback.discarded) if one.playback else 0 for one in measured],
     )
-    buffers = curves([one.playback for one in measured], rated, profile)
+    tried = curves([one.playback for one in measured], rated, profile)
     assessed = [
         AssessedStream(
             id=f"s{k + 1:02d}",
@@ -47,25 +55,43 @@ def assess(
             windows=windows[k],
             budget=steps[k],
             playback=one.playback,
-            curve=buffers[k],
+            curve=tried[k],
         )
         for k, one in enumerate(measured)
     ]
     by_stream = {id(one.stream): one for one in assessed}
+    counted = counted_parts(calls, measured, rated, profile)
+    legs = conversations(calls)
+    found = [
+        assess_call(
+            k + 1,
+            legs[k] + 1,
+            call,
+            [by_stream[id(stream)] for stream in call.from_caller],
+            [by_stream[id(stream)] for stream in call.from_callee],
+            counted,
+        )
+        for k, call in enumerate(calls)
+    ]
     return Assessment(
         captures=list(captures),
         streams=assessed,
-        calls=[
-            assess_call(
-                k,
-                call,
-                [by_stream[id(stream)] for stream in call.from_caller],
-                [by_stream[id(stream)] for stream in call.from_callee],
-            )
-            for k, call in enumerate(calls, 1)
-        ],
+        calls=found,
         damage=list(damage),
+        messages=_messages(messages, found),
+        events=[
+            row
+            for one in assessed
+            for row in event_rows(one.call, one.id, telephone_events(one.stream, buffers[one.stream.recording]))
+        ],
     )
+
+
+def _messages(messages: Sequence[SignallingMessage], calls: Sequence[AssessedCall]) -> list[SignallingRow]:
+    """All messages with the id of their call, by time."""
+    of = {id(message): call.id for call in calls if call.signalled for message in call.signalled.messages}
+    rows = [signalling_row(message, of.get(id(message), "")) for message in messages]
+    return sorted(rows, key=lambda row: row.time_ns)
 
 
 def _note_ratings(measured: Sequence[Measured], rated: Rated) -> None:

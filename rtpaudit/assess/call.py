@@ -3,6 +3,7 @@
 import math
 from collections.abc import Sequence
 
+from rtpaudit.assess.counted import Counted
 from rtpaudit.assess.results import AssessedCall, AssessedStream, CallFigures
 from rtpaudit.emodel.g107 import mos_from_r
 from rtpaudit.emodel.g109 import quality_band
@@ -13,38 +14,53 @@ NAN = float("nan")
 
 
 def assess_call(
-    number: int, call: Call, from_caller: list[AssessedStream], from_callee: list[AssessedStream]
+    number: int,
+    conversation: int,
+    call: Call,
+    from_caller: list[AssessedStream],
+    from_callee: list[AssessedStream],
+    counted: Counted,
 ) -> AssessedCall:
     """One call with its figures; ``number`` counts from 1."""
     identifier = f"c{number:02d}"
     for stream in from_caller + from_callee:
         stream.call = identifier
     encodings = dict.fromkeys(one.stream.encoding for one in from_caller + from_callee)
+    said = call.signalled
+    answered_ns = said.answered_ns if said else None
+    begun_ns = call.started_ns if answered_ns is None else answered_ns
     return AssessedCall(
         id=identifier,
-        conversation=f"v{number:02d}",
+        conversation=f"v{conversation:02d}",
         capture=call.capture,
-        call_id="",
+        call_id=said.call_id if said else "",
         caller=call.caller,
         callee=call.callee,
         started_ns=call.started_ns,
-        answered_ns=None,
+        answered_ns=answered_ns,
         ended_ns=call.ended_ns,
-        duration_s=(call.ended_ns - call.started_ns) / NS_PER_S,
-        outcome="media only",
-        status_code=None,
-        setup_delay_s=NAN,
-        release_by="",
+        duration_s=(call.ended_ns - begun_ns) / NS_PER_S,
+        outcome=said.outcome if said else "media only",
+        status_code=said.status_code if said else None,
+        setup_delay_s=said.setup_delay_s if said else NAN,
+        release_by=said.release_by if said else "",
         encoding="/".join(encodings),
         from_caller=from_caller,
         from_callee=from_callee,
-        figures=call_figures(from_caller, from_callee),
+        figures=call_figures(from_caller, from_callee, counted),
+        signalled=said,
+        unseen=call.unseen,
     )
 
 
-def call_figures(from_caller: Sequence[AssessedStream], from_callee: Sequence[AssessedStream]) -> CallFigures:
+def call_figures(
+    from_caller: Sequence[AssessedStream], from_callee: Sequence[AssessedStream], counted: Counted
+) -> CallFigures:
     """What each side heard, and the figures of the worse direction."""
-    callee_hears, caller_hears = together(from_caller, "r_factor"), together(from_callee, "r_factor")
+    callee_hears, caller_hears = (
+        weighted([(counted[one.id].r_factor, counted[one.id].packets) for one in side])
+        for side in (from_caller, from_callee)
+    )
     directions = [(caller_hears, from_callee), (callee_hears, from_caller)]
     # The lower rating is the worse; where there is none, the greater loss.
     R, worse = min(
@@ -66,10 +82,14 @@ def call_figures(from_caller: Sequence[AssessedStream], from_callee: Sequence[As
 
 def together(streams: Sequence[AssessedStream], figure: str) -> float:
     """Mean of a figure over the streams of one direction, weighted by expected packets; NaN where none has it."""
-    pairs = [(getattr(one.figures, figure), one.figures.packets_expected) for one in streams]
+    return weighted([(getattr(one.figures, figure), one.figures.packets_expected) for one in streams])
+
+
+def weighted(pairs: Sequence[tuple[float, int]]) -> float:
+    """Mean of values by their weights; NaN where no value is known, or nothing weighs."""
     known = [(value, weight) for value, weight in pairs if not math.isnan(value)]
-    weight = sum(weight for _, weight in known)
-    return sum(value * own for value, own in known) / weight if weight else NAN
+    whole = sum(weight for _, weight in known)
+    return sum(value * weight for value, weight in known) / whole if whole else NAN
 
 
 def _loss(streams: Sequence[AssessedStream]) -> float:

@@ -6,9 +6,11 @@ import numpy as np
 from numpy.typing import NDArray
 
 from rtpaudit.assess.playback import Playback
+from rtpaudit.assess.rows import EventRow, SignallingRow
 from rtpaudit.capture.frames import Damage
 from rtpaudit.emodel.budget import Budget
 from rtpaudit.media.streams import Stream
+from rtpaudit.signalling.calls import MediaTerm, SipCall
 
 NAN = float("nan")
 
@@ -163,6 +165,10 @@ class AssessedCall:
     from_callee: list[AssessedStream]
     figures: CallFigures
     headline: str = ""
+    signalled: SipCall | None = None
+    """what the endpoints said of it"""
+    unseen: list[MediaTerm] = field(default_factory=list)
+    """audio that a side asked for and that never came"""
 
     @property
     def streams(self) -> list[AssessedStream]:
@@ -178,6 +184,11 @@ class Assessment:
     streams: list[AssessedStream] = field(default_factory=list)
     calls: list[AssessedCall] = field(default_factory=list)
     damage: list[Damage] = field(default_factory=list)
+    messages: list[SignallingRow] = field(default_factory=list)
+    """in order of time"""
+    events: list[EventRow] = field(default_factory=list)
+    frames_dropped: dict[int, int] = field(default_factory=dict)
+    """by recording: frames that the capture host itself says it dropped"""
 
 
 STREAM_FIGURES = tuple(one.name for one in fields(StreamFigures))

@@ -55,6 +55,7 @@ class _Joined:
         call = self._call_of(found)
         if found is None or call is None:
             return False
+        stream.encrypted |= found.term.encrypted
         self._put(stream, call, OTHER[found.term.side], "announced")
         return True
 
@@ -71,6 +72,7 @@ class _Joined:
         call_there = self._call_of(found)
         if found is None or call_there is None:
             return False
+        stream.encrypted |= found.term.encrypted
         self._put(stream, call_there, found.term.side, "mirror")
         return True
 

@@ -67,10 +67,10 @@ def meaning_of(
         announced = offered(flow, number, int(rows.time_ns[first])) if offered else None
         if number in given:
             encodings[number], basis[number] = given[number], "given"
+        elif number in STATIC and (announced is None or announced == STATIC[number]):
+            encodings[number], basis[number] = STATIC[number], "static"
         elif announced is not None and (announced.clock_rate_hz or announced.name in CONTENT_OF):
             encodings[number], basis[number] = announced, "offer"
-        elif number in STATIC:
-            encodings[number], basis[number] = STATIC[number], "static"
         elif number == OLD_COMFORT_NOISE:
             encodings[number], basis[number] = STATIC[13], "static"
         elif _carries_events(rows, span, number, buffers):

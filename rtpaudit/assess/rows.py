@@ -1,0 +1,87 @@
+"""Rows of the signalling, events and reports tables, each with an attribute for every column."""
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+from rtpaudit.media.events import TelephoneEvent
+from rtpaudit.signalling.calls import SignallingMessage
+
+
+@dataclass(slots=True)
+class SignallingRow:
+    """One message."""
+
+    time_ns: int
+    call: str
+    from_: str
+    to: str
+    message: str
+    line: str
+    protocol: str
+    transport: str
+    call_id: str
+    cseq: str
+    status_code: int | None
+    repeated: bool
+    capture: str
+    frame: int
+    impersonal_line: str = ""
+    """what may be shown where nobody is to be named"""
+
+
+@dataclass(slots=True)
+class EventRow:
+    """One telephone event, or one key heard in the sound."""
+
+    call: str
+    stream: str
+    time_ns: int
+    from_s: float
+    event: str
+    digit: str
+    duration_ms: float
+    level_dbm0: float
+    carried_as: str
+    packets: int | None
+    end_seen: bool | None
+
+
+def signalling_row(message: SignallingMessage, call: str) -> SignallingRow:
+    """A message as a row; ``call`` is "" where it belongs to none."""
+    return SignallingRow(
+        time_ns=message.time_ns,
+        call=call,
+        from_=message.source,
+        to=message.destination,
+        message=message.message,
+        line=message.line,
+        protocol=message.protocol,
+        transport=message.transport,
+        call_id=message.call_id,
+        cseq=message.cseq,
+        status_code=message.status_code,
+        repeated=message.repeated,
+        capture=message.capture,
+        frame=message.frame,
+        impersonal_line=message.impersonal_line,
+    )
+
+
+def event_rows(call: str, stream: str, events: Sequence[TelephoneEvent]) -> list[EventRow]:
+    """Telephone events of a stream as rows."""
+    return [
+        EventRow(
+            call=call,
+            stream=stream,
+            time_ns=event.time_ns,
+            from_s=event.begin_s,
+            event=event.name,
+            digit=event.digit,
+            duration_ms=event.duration_ms,
+            level_dbm0=event.level_dbm0,
+            carried_as="event",
+            packets=event.packets,
+            end_seen=event.end_seen,
+        )
+        for event in events
+    ]
