@@ -22,7 +22,8 @@ from rtpaudit.decode.layers import (
     UNKNOWN_LINK,
     Rows,
 )
-from rtpaudit.decode.link import ETHERTYPE_TABLE, PPP_TABLE, link_headers, starting_layer
+from rtpaudit.decode.link import starting_layer
+from rtpaudit.decode.link_headers import ETHERTYPE_TABLE, PPP_TABLE, link_headers
 from rtpaudit.decode.network import PROTOCOL_TABLE, network_headers
 from rtpaudit.decode.octets import Address, address
 from rtpaudit.decode.packets import Flows, Packets
@@ -173,10 +174,13 @@ class Path:
     damage: list[Damage] = field(default_factory=list)
     tally: NDArray[np.int64] = field(default_factory=lambda: np.zeros(LAYERS, np.int64))
     told: set[tuple[str, int]] = field(default_factory=set)
+    listed: Flows | None = None
 
     def flows(self) -> Flows:
-        """All flows so far."""
-        return self.table.flows()
+        """All flows so far; made anew only when there are more."""
+        if self.listed is None or len(self.listed) < self.table.count:
+            self.listed = self.table.flows()
+        return self.listed
 
     def skipped(self) -> dict[str, int]:
         """Frames left out so far, by reason."""

@@ -6,13 +6,14 @@ stays open as long as memory and capture time allow, then it is given up: the ne
 """
 
 from bisect import insort
-from collections.abc import Callable, Iterator
+from collections.abc import Callable
 from dataclasses import dataclass, field
 
 import numpy as np
 from numpy.typing import NDArray
 
-from rtpaudit.decode.packets import Kind, Packets
+from rtpaudit.decode.packets import Packets
+from rtpaudit.decode.segments import Segment, read_segments
 from rtpaudit.units import NS_PER_S
 
 MAX_WAIT_NS = 10 * NS_PER_S
@@ -45,8 +46,6 @@ LOOKED_AT = 64
 ENOUGH = 16
 """Octets after which a no counts: a first segment may be as short as one octet."""
 
-SYN, RST = 2, 4
-
 
 @dataclass(frozen=True, slots=True)
 class TcpChunk:
@@ -62,17 +61,6 @@ class TcpChunk:
     """octets are missing before these: lost by the capture, cut by it, or before its start"""
 
 
-@dataclass(order=True, slots=True)
-class _Segment:
-    start: int
-    """position in the stream, counting on over wraps"""
-    length: int
-    time_ns: int = field(compare=False)
-    frame: int = field(compare=False)
-    octets: bytes = field(compare=False)
-    """fewer than ``length`` where a snap length cut"""
-
-
 @dataclass(slots=True)
 class _Direction:
     next: int
@@ -83,7 +71,7 @@ class _Direction:
     chosen: bool = False
     early: list[TcpChunk] = field(default_factory=list)
     """what came before there was enough to decide"""
-    waiting: list[_Segment] = field(default_factory=list)
+    waiting: list[Segment] = field(default_factory=list)
     held: int = 0
     since_ns: int = 0
     """when the hole opened"""
@@ -125,7 +113,8 @@ class TcpStreams:
     def add(self, packets: Packets) -> list[TcpChunk]:
         """Chunks that the TCP segments of a batch complete."""
         chunks: list[TcpChunk] = []
-        for flow, opens, segment in self._segments(packets):
+        self._make_room(int(packets.flow.max(initial=-1)) + 1)
+        for flow, opens, segment in read_segments(packets, self._refused):
             if opens:
                 chunks += self._open(flow, segment.start)
             if segment.length and not self._refused[flow]:
@@ -137,31 +126,6 @@ class TcpStreams:
     def finish(self) -> list[TcpChunk]:
         """What still waits behind holes."""
         return [chunk for flow in list(self._waiting) for chunk in self._give_up_all(flow)]
-
-    def _segments(self, packets: Packets) -> Iterator[tuple[int, bool, _Segment]]:
-        """Flow, whether a connection opens, and the segment, with the sequence number for its start."""
-        rows = np.flatnonzero(packets.kind == Kind.TCP)
-        if len(rows) == 0:
-            return
-        self._make_room(int(packets.flow[rows].max()) + 1)
-        at = packets.start[rows]
-        header = (packets.octets[at + 12] >> 4).astype(np.int32) * 4
-        opens = (packets.octets[at + 13] & (SYN | RST)) == SYN
-        length = np.maximum(packets.length[rows] - header, 0)
-        useful = (header >= 20) & (opens | ((length > 0) & ~self._refused[packets.flow[rows]]))
-        rows, header, opens, length = rows[useful], header[useful], opens[useful], length[useful]
-        at = packets.start[rows]
-        sequence = sum(packets.octets[at + 4 + place].astype(np.int64) << (24 - 8 * place) for place in range(4))
-        first = at + header
-        last = first + np.clip(packets.captured[rows] - header, 0, length)
-        columns = (packets.flow[rows], opens, sequence, length, packets.time_ns[rows], packets.frame[rows], first, last)
-        for flow, opening, start, count, time_ns, frame, begin, end in zip(
-            *(np.asarray(column).tolist() for column in columns), strict=True
-        ):
-            if opening or not self._refused[flow]:
-                octets = packets.octets[begin:end].tobytes()
-                # A SYN counts as one octet before the data (RFC 9293, 3.4).
-                yield flow, opening, _Segment((start + opening) % (1 << 32), count, time_ns, frame, octets)
 
     def _make_room(self, flows: int) -> None:
         if flows > len(self._refused):
@@ -182,7 +146,7 @@ class TcpStreams:
         self._refused[flow] = False
         return chunks
 
-    def _take(self, flow: int, segment: _Segment) -> list[TcpChunk]:
+    def _take(self, flow: int, segment: Segment) -> list[TcpChunk]:
         direction = self._directions.get(flow)
         chunks: list[TcpChunk] = []
         if direction is not None:
@@ -234,7 +198,7 @@ class TcpStreams:
         direction.waiting.clear()
         direction.held = 0
 
-    def _hold(self, flow: int, direction: _Direction, segment: _Segment) -> None:
+    def _hold(self, flow: int, direction: _Direction, segment: Segment) -> None:
         insort(direction.waiting, segment)
         direction.held += len(segment.octets) + SEGMENT_COST
         self._held += len(segment.octets) + SEGMENT_COST
@@ -248,7 +212,7 @@ class TcpStreams:
             direction.since_ns = since_ns
             self._waiting[flow] = direction
 
-    def _deliver(self, flow: int, direction: _Direction, segment: _Segment) -> list[TcpChunk]:
+    def _deliver(self, flow: int, direction: _Direction, segment: Segment) -> list[TcpChunk]:
         """Hand out a segment that is next, and whatever waited for it, all at the arrival of that segment."""
         chunks = self._hand_out(flow, direction, segment, segment.time_ns, segment.frame)
         if direction.waiting and direction.waiting[0].start <= direction.next:
@@ -257,15 +221,13 @@ class TcpStreams:
             self._wait(flow, direction, segment.time_ns)
         return chunks
 
-    def _next(self, direction: _Direction) -> _Segment:
+    def _next(self, direction: _Direction) -> Segment:
         segment = direction.waiting.pop(0)
         direction.held -= len(segment.octets) + SEGMENT_COST
         self._held -= len(segment.octets) + SEGMENT_COST
         return segment
 
-    def _hand_out(
-        self, flow: int, direction: _Direction, segment: _Segment, time_ns: int, frame: int
-    ) -> list[TcpChunk]:
+    def _hand_out(self, flow: int, direction: _Direction, segment: Segment, time_ns: int, frame: int) -> list[TcpChunk]:
         end = segment.start + segment.length
         if end <= direction.next:
             return []

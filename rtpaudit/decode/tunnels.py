@@ -28,7 +28,7 @@ from rtpaudit.decode.layers import (
     LayerTable,
     Rows,
 )
-from rtpaudit.decode.link import ETHERTYPE_TABLE
+from rtpaudit.decode.link_headers import ETHERTYPE_TABLE
 
 Numbers = NDArray[np.int64]
 Inner = tuple[Numbers, LayerTable]

@@ -5,26 +5,7 @@ import pytest
 from rtpaudit.decode.link import LINK_TYPES, link_type
 from tests.craft import ethernet, ipv4, udp
 from tests.decode.made import Row, decoded
-from tests.decode.specimens import FOUR, SIX, SOUND, cooked, cooked_2, label, pppoe, snap
-
-CARRIERS = {
-    "BSD loopback, little-endian": (0, b"\x02\0\0\0" + FOUR),
-    "BSD loopback, big-endian": (0, b"\0\0\0\x02" + FOUR),
-    "BSD loopback with IPv6 of macOS": (0, b"\x1e\0\0\0" + SIX),
-    "BSD loopback with IPv6 of FreeBSD, big-endian": (108, b"\0\0\0\x1c" + SIX),
-    "raw IP of some BSDs": (12, FOUR),
-    "raw IP of OpenBSD": (14, SIX),
-    "IPv4 only": (228, FOUR),
-    "IPv6 only": (229, SIX),
-    "PPP over Ethernet without Ethernet": (51, pppoe(b"\0\x21", FOUR)),
-    "serial HDLC with an EtherType": (104, b"\x0f\0\x08\0" + FOUR),
-    "the same to many": (50, b"\x8f\0\x86\xdd" + SIX),
-    "MPLS without Ethernet": (219, label(16, True) + FOUR),
-    "PPP with an MPLS label": (9, b"\x02\x81" + label(16, True) + FOUR),
-    "an old outer VLAN tag": (1, ethernet(b"\0\x64\x08\0" + FOUR, 0x9100)),
-    "SNAP inside a VLAN tag": (1, ethernet(b"\0\x64" + snap(0x0800, FOUR)[12:], 0x8100)),
-    "Ethernet inside Ethernet": (1, ethernet(ethernet(FOUR), 0x6558)),
-}
+from tests.decode.specimens import CARRIERS, FOUR, SOUND, cooked, cooked_2, pppoe
 
 
 def only(rows: list[Row]) -> Row:
