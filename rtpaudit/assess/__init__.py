@@ -1,12 +1,13 @@
 """Assess: streams and calls come in; their figures, rated and by window, go out."""
 
 from collections.abc import Sequence
+from functools import partial
 
 import numpy as np
 
 from rtpaudit.assess.call import assess_call
 from rtpaudit.assess.counted import counted_parts
-from rtpaudit.assess.rating import Rated, budgets, curves, rate, rate_windows
+from rtpaudit.assess.rating import Rated, budgets, buffer_curve, rate, rate_windows
 from rtpaudit.assess.results import AssessedCall, AssessedStream, Assessment, WindowColumns
 from rtpaudit.assess.rows import SignallingRow, event_rows, signalling_row
 from rtpaudit.assess.stream import Measured, measure
@@ -42,7 +43,6 @@ def assess(
         [one.network.packets_lost for one in measured],
         [len(one.playback.discarded) if one.playback else 0 for one in measured],
     )
-    tried = curves([one.playback for one in measured], rated, profile)
     assessed = [
         AssessedStream(
             id=f"s{k + 1:02d}",
@@ -55,7 +55,7 @@ def assess(
             windows=windows[k],
             budget=steps[k],
             playback=one.playback,
-            curve=tried[k],
+            work_out_curve=partial(buffer_curve, one.playback, rated, k, profile) if one.playback else None,
         )
         for k, one in enumerate(measured)
     ]

@@ -1,5 +1,6 @@
 """A stream at the receiver's playout buffer: what was late, what the ear missed, what other buffers would have done."""
 
+from collections.abc import Callable
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -30,8 +31,8 @@ class Playback:
     burst_ratio: float
     """of lost and discarded packets together"""
     burst_gap: BurstGap
-    what_if: WhatIf
-    """the same arrivals at fixed buffers of other delays"""
+    other_buffers: Callable[[], WhatIf]
+    """works out the same arrivals at fixed buffers of other delays"""
 
     @property
     def discard_pct(self) -> float:
@@ -51,13 +52,22 @@ def play_back(stream: Stream, network: NetworkFigures, settings: Playout, starte
     time_ns, ticks = packets.time_ns[rows], packets.media_ticks[rows]
     pause = round(settings.reset_pause_ms * stream.clock_rate_hz / MS_PER_S)
     spurt = talkspurts(
-        sequence, segment, packets.media_ticks[distinct], packet_ticks(stream)[distinct], pause, audio=audio
+        sequence,
+        segment,
+        packets.media_ticks[distinct],
+        packet_ticks(stream)[distinct],
+        pause,
+        audio=None if len(rows) == len(distinct) else audio,
     )
     skew = network.clock_skew_ppm
     played = play(time_ns, ticks, spurt, stream.clock_rate_hz, settings, skew)
-    fixed = played
-    if settings.kind != "fixed":
-        fixed = play(time_ns, ticks, spurt, stream.clock_rate_hz, replace(settings, kind="fixed"), skew)
+
+    def other_buffers() -> WhatIf:
+        fixed = played
+        if settings.kind != "fixed":
+            fixed = play(time_ns, ticks, spurt, stream.clock_rate_hz, replace(settings, kind="fixed"), skew)
+        return what_if(fixed.required_ns, sequence, segment, audio)
+
     discarded = rows[~played.played]
     kept = np.ones(len(packets), np.bool_)
     kept[discarded] = False
@@ -76,7 +86,7 @@ def play_back(stream: Stream, network: NetworkFigures, settings: Playout, starte
         expected=network.packets_expected,
         burst_ratio=burst_ratio(runs),
         burst_gap=bursts_and_gaps(runs, stream.packet_time_ms),
-        what_if=what_if(fixed.required_ns, sequence, segment, audio),
+        other_buffers=other_buffers,
     )
 
 

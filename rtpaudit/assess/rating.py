@@ -163,35 +163,23 @@ def budgets(rated: Rated, lost: Sequence[int], discarded: Sequence[int]) -> list
     return [Budget(**{name: column[k] for name, column in columns.items()}) for k in range(len(lost))]
 
 
-def curves(playbacks: Sequence[Playback | None], rated: Rated, profile: Profile) -> list[BufferCurve | None]:
-    """R of each stream at fixed playout buffers of other delays."""
-    rows = [k for k, one in enumerate(playbacks) if one is not None]
-    found: list[BufferCurve | None] = [None] * len(playbacks)
-    tried = [one.what_if for one in playbacks if one is not None]
-    if not rows:
-        return found
-    buffered = np.stack([one.mean_delay_ms for one in tried])
-    nominal = np.stack([one.delay_ms for one in tried])
+def buffer_curve(playback: Playback, rated: Rated, k: int, profile: Profile) -> BufferCurve:
+    """R of stream ``k`` at fixed playout buffers of other delays."""
+    tried = playback.other_buffers()
+    buffered = np.where(np.isnan(tried.mean_delay_ms), tried.delay_ms, tried.mean_delay_ms)
     R = rating(
         profile.planning,
-        Ta=rated.fixed_ms[rows, None] + np.where(np.isnan(buffered), nominal, buffered),
-        Ie=rated.codec.Ie[rows, None],
-        Bpl=rated.codec.Bpl[rows, None],
-        Ppl=np.stack([one.lost_pct for one in tried]),
-        BurstR=np.stack([one.burst_ratio for one in tried]),
-        TELR=rated.telr_db[rows, None],
+        Ta=rated.fixed_ms[k] + buffered,
+        Ie=rated.codec.Ie[k],
+        Bpl=rated.codec.Bpl[k],
+        Ppl=tried.lost_pct,
+        BurstR=tried.burst_ratio,
+        TELR=rated.telr_db[k],
     ).R
-    for row, k in enumerate(rows):
-        known = not np.isnan(R[row]).any()
-        best = int(np.argmax(R[row] >= R[row].max() - NEAR_BEST)) if known else 0
-        found[k] = BufferCurve(
-            tried[row].delay_ms,
-            tried[row].discard_pct,
-            R[row],
-            float(tried[row].delay_ms[best]) if known else float("nan"),
-            float(R[row, best]),
-        )
-    return found
+    if np.isnan(R).any():
+        return BufferCurve(tried.delay_ms, tried.discard_pct, R, float("nan"), float("nan"))
+    best = int(np.argmax(R >= R.max() - NEAR_BEST))
+    return BufferCurve(tried.delay_ms, tried.discard_pct, R, float(tried.delay_ms[best]), float(R[best]))
 
 
 def _bit_rate(stream: Stream) -> float:

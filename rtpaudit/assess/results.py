@@ -1,5 +1,6 @@
 """What assess hands on: figures of streams and calls under the names of the columns that people read."""
 
+from collections.abc import Callable
 from dataclasses import dataclass, field, fields
 
 import numpy as np
@@ -124,7 +125,16 @@ class AssessedStream:
     """how the rating goes from Ro down to R; NaN throughout where there is none"""
     playback: Playback | None = None
     """None where the stream has no audio or no known clock"""
-    curve: BufferCurve | None = None
+    work_out_curve: Callable[[], BufferCurve] | None = None
+    """None where there is no playback"""
+    _curve: BufferCurve | None = None
+
+    @property
+    def curve(self) -> BufferCurve | None:
+        """R against the delay of the buffer; worked out when it is first asked for."""
+        if self._curve is None and self.work_out_curve is not None:
+            self._curve = self.work_out_curve()
+        return self._curve
 
 
 @dataclass(slots=True)
