@@ -6,6 +6,8 @@ Importing this module imports numba; only modules that hold kernels do so.
 import sys
 from collections.abc import Callable
 from contextlib import suppress
+from functools import cache
+from pathlib import Path
 from types import ModuleType
 from typing import Any, TypeVar, cast
 
@@ -18,10 +20,22 @@ F = TypeVar("F", bound=Callable[..., Any])
 def kernel(function: F) -> F:
     """Compile a plain loop over arrays on its first call; later runs load it from the cache."""
     try:
-        return cast(F, njit(cache=True, nogil=True, error_model="numpy")(function))
+        compiled = njit(cache=True, nogil=True, error_model="numpy")(function)
     except RuntimeError:
         # numba found no writable place for its cache (a read-only installation without a home): compile each run.
         return cast(F, njit(nogil=True, error_model="numpy")(function))
+    # numba watches the kernel's own file alone; constants and parts from other files would stay what they were.
+    file: Any = getattr(getattr(compiled, "_cache", None), "_cache_file", None)
+    if hasattr(file, "_source_stamp"):
+        file._source_stamp = file._source_stamp, _stamp(Path(function.__code__.co_filename).parent)
+    return cast(F, compiled)
+
+
+@cache
+def _stamp(folder: Path) -> tuple[tuple[str, int, int], ...]:
+    """Names, times and sizes of the modules in a kernel's folder, which is where it takes its parts from."""
+    found = sorted((each.name, each.stat()) for each in folder.glob("*.py"))
+    return tuple((name, status.st_mtime_ns, status.st_size) for name, status in found)
 
 
 def on_first_compilation(announce: Callable[[], None]) -> None:
