@@ -159,14 +159,12 @@ def _listen_to(
     """Walk one recording from its frames to its streams."""
     decoder, collector, signalling = Decoder(), RtpCollector(), SignallingCollector()
     buffers: list[Octets] = []
-    names: list[str] = []
 
     def take(batches: Sequence[Any], octets: Octets | None, name: str) -> None:
         for packets in batches:
             if packets.octets is not octets:
                 # Datagrams put together from fragments lie in a buffer of their own.
                 buffers.append(packets.octets)
-                names.append(name)
                 collector.add(packets, len(buffers) - 1)
             else:
                 collector.add(packets, here)
@@ -176,7 +174,6 @@ def _listen_to(
     for file in recording.files:
         here = len(buffers)
         buffers.append(file.octets)
-        names.append(file.name)
         for frames in file.batches():
             take(decoder.decode(frames, file.name), file.octets, file.name)
             progress(passed + (int(frames.start[-1]) if len(frames) else 0))
@@ -190,7 +187,7 @@ def _listen_to(
         decoder.flows,
         buffers,
         recording=number,
-        captures=names,
+        capture=recording.name,
         given=given,
         offered=agreed.offered(decoder.flows),
     )

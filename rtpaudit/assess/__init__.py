@@ -77,7 +77,7 @@ def assess(
         captures=list(captures),
         streams=assessed,
         calls=found,
-        damage=list(damage),
+        damage=[*damage, *_cut_payloads(streams)],
         messages=_messages(messages, found),
         events=[
             row
@@ -85,6 +85,27 @@ def assess(
             for row in event_rows(one.call, one.id, telephone_events(one.stream, buffers[one.stream.recording]))
         ],
     )
+
+
+def _cut_payloads(streams: Sequence[Stream]) -> list[Damage]:
+    """What a snap length cut out of payloads, one row for each recording: the figures are whole, the sound is not."""
+    counts: dict[str, tuple[int, int, int]] = {}
+    for stream in streams:
+        packets = stream.packets
+        cut = np.flatnonzero(packets.captured < packets.length)
+        if len(cut):
+            first, number, missing = counts.get(stream.capture, (int(packets.start[cut[0]]), 0, 0))
+            octets = int((packets.length[cut] - packets.captured[cut]).sum())
+            counts[stream.capture] = (min(first, int(packets.start[cut[0]])), number + len(cut), missing + octets)
+    return [
+        Damage(
+            capture,
+            first,
+            f"{number} RTP payloads cut short by the capture's snap length",
+            f"{missing} octets of sound; the sound is incomplete, the figures are not",
+        )
+        for capture, (first, number, missing) in counts.items()
+    ]
 
 
 def _messages(messages: Sequence[SignallingMessage], calls: Sequence[AssessedCall]) -> list[SignallingRow]:

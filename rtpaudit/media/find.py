@@ -28,13 +28,13 @@ def find_streams(
     buffers: Sequence[Octets],
     *,
     recording: int = 0,
-    captures: Sequence[str] = ("",),
+    capture: str = "",
     given: Mapping[int, Encoding] | None = None,
     offered: Offered | None = None,
 ) -> list[Stream]:
     """The streams of one recording, by first packet.
 
-    ``buffers`` are the octets that rows point into, ``captures`` the name of the file that each was read from.
+    ``buffers`` are the octets that rows point into, ``capture`` the name of the recording.
     """
     groups = collector.finish()
     merge_interfaces(groups)
@@ -48,7 +48,6 @@ def find_streams(
     streams = []
     for group, span in enumerate(_spans(groups)):
         for packets in _parts(groups, numbering, slice(*span), meanings[group]):
-            capture = captures[packets.buffer[0]]
             streams.append(_stream(packets, groups, group, meanings[group], flows, recording, capture))
     return sorted(streams, key=lambda one: (int(one.packets.time_ns[0]), int(one.packets.frame[0])))
 
