@@ -39,6 +39,14 @@ class FrameColumns:
         self.captured[self.rows - 1] = held
         self.original[self.rows - 1] = original if held <= original < 1 << 31 else held
 
+    def last_start(self) -> int:
+        """First octet of the last frame, 0 where there is none."""
+        return int(self.start[self.rows - 1]) if self.rows else 0
+
+    def latest_ns(self) -> int | None:
+        """Latest time, None where there is no frame."""
+        return int(self.time_ns[: self.rows].max()) if self.rows else None
+
     def frames(self, octets: Octets, interfaces: list[Interface], first_number: int) -> Frames:
         """The filled rows as a batch."""
         filled = slice(0, self.rows)

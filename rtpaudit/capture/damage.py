@@ -23,6 +23,10 @@ class DamageLog:
         self.rows: list[Damage] = []
         self._further = 0
 
+    def only_from(self, offset: int) -> bool:
+        """Whether all that is damaged lies at ``offset`` or behind it."""
+        return all(row.offset >= offset for row in self.rows)
+
     def add(self, offset: int, what: str, lost: str) -> None:
         """Note what was found at ``offset`` and what the audit does without."""
         if len(self.rows) < MOST_ROWS:

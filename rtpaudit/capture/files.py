@@ -18,9 +18,15 @@ from rtpaudit.capture.frames import Damage, Frames, Interface, Octets
 from rtpaudit.capture.recognise import HEAD, container_of, refusal
 from rtpaudit.capture.spool import spool
 from rtpaudit.errors import UnreadableCapture
+from rtpaudit.units import NS_PER_S
 
 BATCH = 262_144
 STANDARD_INPUT = "-"
+
+TAIL = 8 << 20
+"""Octets at the end of a file that tell when it ends."""
+MOST_SPAN_NS = 30 * 86_400 * NS_PER_S
+"""A file that seems to last longer is read whole before it is believed."""
 
 
 class Reader(Protocol):
@@ -32,6 +38,9 @@ class Reader(Protocol):
 
     def batches(self, size: int) -> Iterator[Frames]:
         """Frames in file order."""
+
+    def last_time_ns(self, tail: int) -> int | None:
+        """Latest time behind an offset, None where that cannot be told."""
 
 
 class CaptureFile:
@@ -61,6 +70,19 @@ class CaptureFile:
             self._learn(reader)
             yield frames
         self._learn(reader)
+
+    def span_ns(self) -> tuple[int, int] | None:
+        """First and last time, None where there is no frame. A long file is not read but for its two ends."""
+        reader = self._reader()
+        first = next(reader.batches(1), None)
+        if first is not None and len(self.octets) > 4 * TAIL:
+            self.interfaces = list(reader.interfaces)
+            began = int(first.time_ns[0])
+            ended = reader.last_time_ns(len(self.octets) - TAIL)
+            if ended is not None and 0 <= ended - began <= MOST_SPAN_NS:
+                return began, ended
+        spans = [(int(frames.time_ns.min()), int(frames.time_ns.max())) for frames in self.batches()]
+        return (min(began for began, _ in spans), max(ended for _, ended in spans)) if spans else None
 
     def _reader(self) -> Reader:
         # The readers hold kernels, and who only wants the types of this room does without numba.

@@ -148,6 +148,16 @@ class PcapReader:
                 yield columns.frames(self.octets, self.interfaces, first_number)
             first_number += columns.rows
 
+    def last_time_ns(self, tail: int) -> int | None:
+        """Latest time among the records behind ``tail``, None where they do not lead to the end of the file."""
+        self.position = find_run(self.octets, tail, self.big, NS_PER_S // self.tick_ns, -1)
+        if self.position < 0:
+            return None
+        columns = FrameColumns((len(self.octets) - self.position) // RECORD_HEADER + 1)
+        self._last_s = -1
+        self._fill(columns)
+        return columns.latest_ns() if self.damage.only_from(columns.last_start() - RECORD_HEADER) else None
+
     def _fill(self, columns: FrameColumns) -> None:
         while True:
             rows, self.position, stopped = index_records(

@@ -12,6 +12,7 @@ from rtpaudit.capture.frames import Frames, Interface, Octets
 from rtpaudit.capture.pcapng_options import NO_LIMIT, describe, statistics
 
 SECTION_HEADER_LENGTH = 28
+PACKET_HEADER = 28
 MOST_INTERFACES = 1 << 16
 """Over all sections: what the column of interfaces can number."""
 MOST_RARE_BLOCKS = 1_000_000
@@ -50,6 +51,23 @@ class PcapngReader:
                 yield columns.frames(self.octets, self.interfaces, first_number)
             first_number += columns.rows
         self._report_counts()
+
+    def last_time_ns(self, tail: int) -> int | None:
+        """Latest time among the blocks behind ``tail``, None where they do not lead to the end of the file.
+
+        They are taken to belong to the section that was read last, which holds if it is the only one.
+        """
+        self.position = blocks.find_block(self.octets, tail, self._big)
+        if self.position < 0:
+            return None
+        columns = FrameColumns((len(self.octets) - self.position) // 16 + 1)
+        before = self._strangeness()
+        self._fill(columns)
+        sound = self.damage.only_from(columns.last_start() - PACKET_HEADER) and self._strangeness() == before
+        return columns.latest_ns() if sound else None
+
+    def _strangeness(self) -> tuple[int, ...]:
+        return len(self.interfaces), int(self._state[blocks.HOMELESS]), int(self._state[blocks.UNTIMED])
 
     def _fill(self, columns: FrameColumns) -> None:
         while True:
@@ -177,8 +195,8 @@ class PcapngReader:
     def _frame_end(self, at: int) -> int:
         """End of the frame in a packet block whose header is sound but for its length, else past the file."""
         nowhere = len(self.octets) + 1
-        head = self.octets[at : at + 28].tobytes()
-        if len(head) < 28:
+        head = self.octets[at : at + PACKET_HEADER].tobytes()
+        if len(head) < PACKET_HEADER:
             return nowhere
         kind, _, interface, _, _, captured, original = struct.unpack(self._order("7I"), head)
         if kind == blocks.OBSOLETE_PACKET:
@@ -186,7 +204,7 @@ class PcapngReader:
         elif kind != blocks.ENHANCED_PACKET:
             return nowhere
         described = interface < len(self.interfaces) - self._first
-        return at + 28 + captured if described and 0 < captured <= original <= LONGEST_FRAME else nowhere
+        return at + PACKET_HEADER + captured if described and 0 < captured <= original <= LONGEST_FRAME else nowhere
 
     def _give_up(self, what: str) -> bool:
         self.damage.add(self.position, what, octets_text(len(self.octets) - self.position))

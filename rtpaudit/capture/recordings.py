@@ -97,12 +97,9 @@ def group(files: Sequence[CaptureFile]) -> list[Recording]:
 
 
 def _extent(file: CaptureFile) -> Extent | None:
-    """First and last time by reading all frame headers, None where there are none."""
-    spans = [(int(frames.time_ns.min()), int(frames.time_ns.max())) for frames in file.batches()]
-    if not spans:
-        return None
+    span = file.span_ns()
     link_types = tuple(sorted({interface.link_type for interface in file.interfaces}))
-    return Extent(file, link_types, min(first for first, _ in spans), max(last for _, last in spans))
+    return Extent(file, link_types, *span) if span else None
 
 
 def _goes_on(ring: list[Extent], extent: Extent) -> bool:

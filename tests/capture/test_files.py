@@ -7,16 +7,18 @@ import os
 import subprocess
 import sys
 import threading
+from collections.abc import Callable
 from pathlib import Path
 
 import numpy as np
 import pyarrow
 import pytest
 
+from rtpaudit.capture import files
 from rtpaudit.capture.files import open_file, why
 from rtpaudit.errors import UnreadableCapture
 from tests.capture.reading import read, read_file
-from tests.craft import pcap, pcapng, pcapng_statistics, rtp_frame
+from tests.craft import PACKET_TIME_NS, START_NS, pcap, pcapng, pcapng_statistics, rtp_frame, spaced
 
 FRAMES = [rtp_frame(number) for number in range(50)]
 
@@ -175,3 +177,33 @@ def test_a_refused_file_is_closed(folder: Path) -> None:
         refused(path)
     after = len(os.listdir("/proc/self/fd")) if before else 0
     assert after == before
+
+
+@pytest.mark.parametrize("make", [pcap, pcapng])
+@pytest.mark.parametrize("spoil", ["", "cut", "noise", "section", "step"])
+def test_the_ends_of_a_long_file_tell_its_span_as_reading_it_does(
+    folder: Path, monkeypatch: pytest.MonkeyPatch, make: Callable[..., bytes], spoil: str
+) -> None:
+    monkeypatch.setattr(files, "TAIL", 2000)
+    times = spaced(50)
+    if spoil == "step":
+        times[30:] = [time - 10**18 for time in times[30:]]
+    capture = make(FRAMES, times)
+    if spoil == "cut":
+        capture = capture[:-7]
+    if spoil == "noise":
+        capture = capture[:-1000] + bytes(range(250)) * 2 + capture[-500:]
+    if spoil == "section":
+        capture += pcapng(FRAMES[:20], spaced(20, START_NS + 10**12))
+    file = open_file(str(put(folder / "call", capture)))
+    times_read = read(capture).times_ns
+    assert file.span_ns() == (min(times_read), max(times_read))
+    assert [one.link_type for one in file.interfaces][:1] == [1]
+
+
+def test_a_long_sound_file_is_not_read_for_its_span(folder: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr(files, "TAIL", 2000)
+    monkeypatch.setattr(files.CaptureFile, "batches", lambda *_: pytest.fail("the whole file was read"))
+    for make in (pcap, pcapng):
+        file = open_file(str(put(folder / "call", make(FRAMES))))
+        assert file.span_ns() == (START_NS, START_NS + 49 * PACKET_TIME_NS)
