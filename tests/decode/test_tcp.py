@@ -1,14 +1,18 @@
 """TCP octets in order: hand-made connections, and any order of segments against the octets that were sent."""
 
+import socket
 from collections.abc import Sequence
 from dataclasses import dataclass
 from itertools import pairwise
+from pathlib import Path
 
+import dpkt
 import numpy as np
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
+from rtpaudit.capture import open_recordings
 from rtpaudit.decode import Decoder, tcp
 from rtpaudit.decode.tcp import TcpChunk, TcpStreams
 from rtpaudit.units import NS_PER_S
@@ -260,3 +264,37 @@ def test_a_batch_without_tcp_gives_nothing() -> None:
     for packets in decoder.decode(frames_of([craft.rtp_frame(1)]), "made.pcap"):
         assert streams.add(packets) == []
         assert np.all(packets.kind != 7)
+
+
+def sent_by_sequence(capture: Path) -> dict[tuple[str, int], bytes]:
+    """Octets of each source by dpkt: segments sorted by sequence number, for a capture without loss or wrap."""
+    pieces: dict[tuple[str, int], dict[int, bytes]] = {}
+    with capture.open("rb") as file:
+        for _, octets in dpkt.pcap.Reader(file):
+            packet = dpkt.ethernet.Ethernet(octets).data
+            segment = getattr(packet, "data", None)
+            if isinstance(segment, dpkt.tcp.TCP) and segment.data:
+                source = (socket.inet_ntoa(packet.src), segment.sport)
+                pieces.setdefault(source, {})[segment.seq] = segment.data
+    return {source: b"".join(parts[seq] for seq in sorted(parts)) for source, parts in pieces.items()}
+
+
+@pytest.mark.parametrize("name", ["sip-tcp.a.pcap", "sip-tcp-split-segments.pcap"])
+def test_recorded_signalling_comes_whole(name: str) -> None:
+    capture = Path(__file__).parents[2] / "fixtures" / "captures" / name
+    decoder = Decoder()
+    streams = TcpStreams(lambda octets: octets.split(b" ")[0] in (b"INVITE", b"SIP/2.0", b"ACK", b"BYE", b"OPTIONS"))
+    chunks: list[TcpChunk] = []
+    for recording in open_recordings([capture]):
+        for file in recording.files:
+            for frames in file.batches():
+                for packets in decoder.decode(frames, file.name):
+                    chunks += streams.add(packets)
+    chunks += streams.finish()
+    flows = decoder.flows
+    ours = {
+        (flows.source_text(flow), int(flows.source_port[flow])): text([one for one in chunks if one.flow == flow])
+        for flow in {chunk.flow for chunk in chunks}
+    }
+    assert ours == sent_by_sequence(capture)
+    assert len(ours) >= 2
