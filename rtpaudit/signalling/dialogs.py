@@ -51,7 +51,8 @@ class _Attempt:
 def _call(leg: Leg) -> SipCall:
     seen = _each_once(leg)
     attempt = _attempt(leg, seen)
-    byes = [one for one in seen if one.method == "BYE"]
+    started_ns = (attempt.invites or seen)[0].time_ns
+    byes = [one for one in seen if one.method == "BYE" and one.time_ns >= started_ns]
     if attempt.answer is not None:
         # Where a call forks to two answers, the caller ends the second at once (section 13.2.2.4).
         byes = [one for one in byes if attempt.answer.to_tag in (one.to_tag, one.from_tag)] or byes
@@ -67,7 +68,7 @@ def _call(leg: Leg) -> SipCall:
         call_id=seen[0].row.call_id,
         caller=_party(leg, seen, CALLER, attempt),
         callee=_party(leg, seen, CALLEE, attempt),
-        started_ns=(attempt.invites or seen)[0].time_ns,
+        started_ns=started_ns,
         answered_ns=_answered_ns(established) if first or attempt.answer else None,
         released_ns=releases[0].time_ns if releases else None,
         ended_ns=byes[0].time_ns if byes else leg.sightings[-1].time_ns,
@@ -124,7 +125,8 @@ def _attempt(leg: Leg, seen: Sequence[Sighting]) -> _Attempt:
     if not invites and responses and not any(one.request for one in seen[: seen.index(responses[0])]):
         # The capture began between the INVITE and its first response.
         numbers = {responses[0].number}
-    responses = [one for one in responses if one.number in numbers]
+    begin_ns = invites[0].time_ns if invites else 0
+    responses = [one for one in responses if one.number in numbers and one.time_ns >= begin_ns]
     answer = next((one for one in responses if 200 <= one.status < 300), None)
     refusals = [one for one in responses if one.status >= 300]
     final = answer or next((one for one in reversed(refusals) if not _passed_over(one)), None)
@@ -202,7 +204,7 @@ def _party(leg: Leg, seen: Sequence[Sighting], side: str, attempt: _Attempt) -> 
     else:
         value = seen[0].to_value if side == CALLER else seen[0].from_value
     address = name_address(value)
-    own = [one for one in seen if leg.sender(one) == side and one.status not in (100, 401, 407, *range(300, 400))]
+    own = [one for one in seen if leg.sender(one) == side and one.status != 100 and not _passed_over(one)]
     # What a refusal says of its sender may be said by a proxy, so it counts least.
     own.sort(key=lambda one: one.status >= 300)
     first = (attempt.invites or seen)[0]

@@ -41,6 +41,9 @@ METHODS = frozenset(
     }
 )
 
+MAX_VALUE = 8192
+"""Letters of a name and address that are looked at."""
+
 TOKEN = re.compile(r"[A-Za-z0-9.!%*_+`'~-]{1,64}", re.ASCII)
 """token, bounded: method names of kilobytes are no methods"""
 
@@ -109,13 +112,16 @@ def parameters_of(text: str) -> dict[str, str]:
     return found
 
 
-@lru_cache(maxsize=4096)
 def name_address(value: str) -> NameAddress:
     """Display name, URI and parameters of one value (name-addr / addr-spec, section 20.10).
 
     A display name that lacks its quotes, or the closing one, ends at the bracket (RFC 4475, 3.1.2.6 and 3.1.2.15).
     """
-    value = value.strip()
+    return _name_address(value.strip()[:MAX_VALUE])
+
+
+@lru_cache(maxsize=4096)
+def _name_address(value: str) -> NameAddress:
     quoted = _QUOTED_STRING.match(value)
     display_name, rest = (quoted[1], value[quoted.end() :]) if quoted else ("", value)
     before, bracket, inside = rest.partition("<")

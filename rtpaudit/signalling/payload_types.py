@@ -2,6 +2,7 @@
 
 import re
 from dataclasses import dataclass
+from functools import lru_cache
 
 from rtpaudit.errors import UnusableArguments
 
@@ -98,6 +99,7 @@ _GIVEN = re.compile(
 )
 
 
+@lru_cache(maxsize=4096)
 def encoding(name: str, clock_rate_hz: int = 0, channels: int = 0, media: str = "audio") -> Encoding:
     """An encoding by name and what was announced with it (``a=rtpmap``, RFC 4566 section 6).
 

@@ -2,6 +2,7 @@
 
 import re
 from dataclasses import dataclass, field
+from functools import lru_cache
 from ipaddress import ip_address
 
 from rtpaudit.errors import MalformedPacket
@@ -180,6 +181,7 @@ def _connection(value: str) -> str:
     return _address(parts[2]) if len(parts) > 2 else ""
 
 
+@lru_cache(maxsize=4096)
 def _address(text: str) -> str:
     """An address as the tables of packets write it; a host name as it stands."""
     bare = text.partition("/")[0].strip("[]")

@@ -55,7 +55,10 @@ class Sighting:
 
     def header(self, name: str) -> str:
         """A kept header field, "" where the message has none."""
-        return next((value for key, value in self.headers if key == name), "")
+        for key, value in self.headers:
+            if key == name:
+                return value
+        return ""
 
     def identity(self) -> tuple[object, ...]:
         """What two copies of the message share, on whatever hop."""
