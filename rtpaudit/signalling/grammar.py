@@ -68,7 +68,12 @@ class NameAddress:
 
 def printable(text: str) -> str:
     """Text whose control and directional characters are written as escapes."""
-    return _UNPRINTABLE.sub(lambda found: f"\\x{ord(found[0]):02x}", text)
+    return _UNPRINTABLE.sub(_as_escape, text)
+
+
+def _as_escape(found: re.Match[str]) -> str:
+    code = ord(found[0])
+    return f"\\x{code:02x}" if code < 256 else f"\\u{code:04x}"
 
 
 def header_name(name: str) -> str:

@@ -1,4 +1,4 @@
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from pathlib import Path
 
 import pytest
@@ -13,6 +13,7 @@ from tests.signalling.test_websocket import INVITE, REQUEST, frame
 from tests.signalling.torture import request, wire
 
 A, B = "192.0.2.101", "192.0.2.201"
+Read = Callable[..., Signalling]
 
 
 def datagram(octets: bytes, source: str = A, destination: str = B, port: int = 5060) -> bytes:
@@ -25,7 +26,7 @@ def exchange() -> list[bytes]:
 
 
 @pytest.fixture
-def read(tmp_path: Path):  # type: ignore[no-untyped-def]
+def read(tmp_path: Path) -> Read:
     def signalling(frames: Sequence[bytes], originals: Sequence[int] | None = None) -> Signalling:
         path = tmp_path / "made.pcap"
         path.write_bytes(pcap(frames, spaced(len(frames)), originals=originals))
@@ -34,7 +35,7 @@ def read(tmp_path: Path):  # type: ignore[no-untyped-def]
     return signalling
 
 
-def test_a_call_on_udp_at_any_port(read) -> None:  # type: ignore[no-untyped-def]
+def test_a_call_on_udp_at_any_port(read: Read) -> None:
     frames = [
         datagram(octets, source[:-5], target[:-5], 41_000) for _, source, target, octets in answered_directly().octets
     ]
@@ -47,14 +48,14 @@ def test_a_call_on_udp_at_any_port(read) -> None:  # type: ignore[no-untyped-def
     assert [row.call for row in signalling.messages] == [0] * 6
 
 
-def test_a_retransmission_is_marked_and_counts_once(read) -> None:  # type: ignore[no-untyped-def]
+def test_a_retransmission_is_marked_and_counts_once(read: Read) -> None:
     frames = exchange()
     signalling = read([frames[0], frames[0], *frames[1:]])
     assert [row.repeated for row in signalling.messages] == [False, True, *[False] * 5]
     assert len(signalling.calls[0].media) == 2
 
 
-def test_a_malformed_message_becomes_damage_and_the_rest_goes_on(read) -> None:  # type: ignore[no-untyped-def]
+def test_a_malformed_message_becomes_damage_and_the_rest_goes_on(read: Read) -> None:
     frames = exchange()
     signalling = read([datagram(torture.BADVERS), *frames, datagram(torture.INSUF)])
     assert len(signalling.calls) == 1
@@ -63,14 +64,14 @@ def test_a_malformed_message_becomes_damage_and_the_rest_goes_on(read) -> None: 
     assert signalling.damage[0].offset == 24 + 16 + 14 + 20 + 8
 
 
-def test_a_message_that_is_usable_though_wrong_is_used_and_noted(read) -> None:  # type: ignore[no-untyped-def]
+def test_a_message_that_is_usable_though_wrong_is_used_and_noted(read: Read) -> None:
     signalling = read([datagram(torture.CLERR)])
     assert signalling.calls[0].media[0].port == 49217
     assert [row.lost for row in signalling.damage] == ["nothing else of it"]
     assert "Content-Length 9999" in signalling.damage[0].what
 
 
-def test_a_message_cut_by_a_snap_length_gives_what_is_there(read) -> None:  # type: ignore[no-untyped-def]
+def test_a_message_cut_by_a_snap_length_gives_what_is_there(read: Read) -> None:
     whole = datagram(torture.UNREASON)
     cut = whole[: whole.index(b"m=video")]
     signalling = read([cut], originals=[len(whole)])
@@ -78,19 +79,19 @@ def test_a_message_cut_by_a_snap_length_gives_what_is_there(read) -> None:  # ty
     assert "the end of the message is missing" in signalling.damage[0].what
 
 
-def test_a_broken_description_leaves_the_call(read) -> None:  # type: ignore[no-untyped-def]
+def test_a_broken_description_leaves_the_call(read: Read) -> None:
     signalling = read([datagram(request("a", length="", body=b"nothing"))])
     assert (signalling.calls[0].outcome, signalling.calls[0].media) == ("no reply", [])
     assert "session description" in signalling.damage[0].what
 
 
-def test_a_flood_of_broken_messages_is_counted(read) -> None:  # type: ignore[no-untyped-def]
+def test_a_flood_of_broken_messages_is_counted(read: Read) -> None:
     signalling = read([datagram(torture.INSUF)] * 1200)
     assert len(signalling.damage) == 1001
     assert signalling.damage[-1].what == "200 more damaged messages"
 
 
-def test_other_texts_are_no_signalling(read) -> None:  # type: ignore[no-untyped-def]
+def test_other_texts_are_no_signalling(read: Read) -> None:
     texts = [
         b"M-SEARCH * HTTP/1.1\r\nHOST: 239.255.255.250:1900\r\n\r\n",
         b"<13>Oct 1 host: hello world",
@@ -106,7 +107,7 @@ def segments(octets: bytes, size: int, *, sequence: int = 1000) -> list[bytes]:
 
 
 @pytest.mark.parametrize("size", [1400, 97])
-def test_sip_on_tcp_with_segments_out_of_order_and_repeated(read, size: int) -> None:  # type: ignore[no-untyped-def]
+def test_sip_on_tcp_with_segments_out_of_order_and_repeated(read: Read, size: int) -> None:
     octets = b"".join(request(name) for name in "abc")
     frames = segments(octets, size)
     if size < 1000:
@@ -116,7 +117,7 @@ def test_sip_on_tcp_with_segments_out_of_order_and_repeated(read, size: int) -> 
     assert {row.transport for row in signalling.messages} == {"TCP"}
 
 
-def test_sip_on_tcp_with_a_missing_segment_loses_one_message(read) -> None:  # type: ignore[no-untyped-def]
+def test_sip_on_tcp_with_a_missing_segment_loses_one_message(read: Read) -> None:
     octets = b"".join(request(name) for name in "abc")
     frames = segments(octets, 100)
     place = len(request("a")) // 100 + 1
@@ -125,24 +126,24 @@ def test_sip_on_tcp_with_a_missing_segment_loses_one_message(read) -> None:  # t
     assert [row.lost for row in signalling.damage] == ["the message", "the messages that they belong to"]
 
 
-def test_a_capture_that_starts_in_the_middle_of_a_connection(read) -> None:  # type: ignore[no-untyped-def]
+def test_a_capture_that_starts_in_the_middle_of_a_connection(read: Read) -> None:
     frames = [ethernet(ipv4(tcp(request("a")[200:], 40_000, 5060, 1), A, B, protocol=6))]
     frames += [ethernet(ipv4(tcp(request("b"), 40_000, 5060, 1 + len(request("a")) - 200), A, B, protocol=6))]
     assert [row.call_id[0] for row in read(frames).messages] == ["b"]
 
 
-def test_sip_in_websocket_frames(read) -> None:  # type: ignore[no-untyped-def]
+def test_sip_in_websocket_frames(read: Read) -> None:
     signalling = read(segments(REQUEST + frame(INVITE, key=b"abcd") + frame(INVITE, key=b"efgh"), 300))
     assert [row.transport for row in signalling.messages] == ["WebSocket", "WebSocket"]
     assert [row.repeated for row in signalling.messages] == [False, True]
 
 
-def test_ipv6_places_are_written_with_brackets(read) -> None:  # type: ignore[no-untyped-def]
+def test_ipv6_places_are_written_with_brackets(read: Read) -> None:
     (row,) = read([ethernet(ipv6(udp(torture.NOREASON, 5060, 5062)), 0x86DD)]).messages
     assert (row.source, row.destination) == ("[2001:db8::10]:5060", "[2001:db8::20]:5062")
 
 
-def test_mgcp_and_h_248_describe_media_without_making_calls(read) -> None:  # type: ignore[no-untyped-def]
+def test_mgcp_and_h_248_describe_media_without_making_calls(read: Read) -> None:
     from tests.signalling.test_gateway_control import ADD, CREATE, CREATED, REPLY, octets
 
     frames = [
@@ -159,7 +160,7 @@ def test_mgcp_and_h_248_describe_media_without_making_calls(read) -> None:  # ty
     assert [row.protocol for row in signalling.messages] == ["MGCP", "MGCP", "H.248", "H.248"]
 
 
-def test_quality_reports_are_taken_out_of_sip_bodies_once(read) -> None:  # type: ignore[no-untyped-def]
+def test_quality_reports_are_taken_out_of_sip_bodies_once(read: Read) -> None:
     head = (
         "PUBLISH sip:collector@example.org SIP/2.0\nFrom: <sip:alice@example.org>;tag=1\nTo: <sip:proxy@example.org>\n"
     )
