@@ -20,7 +20,10 @@ from rtpaudit.media.agreed import Agreed
 from rtpaudit.media.calls import Call
 from rtpaudit.media.find import find_streams
 from rtpaudit.media.join import join
+from rtpaudit.media.naming import name_all, streams_of
+from rtpaudit.media.near import note_near_ends
 from rtpaudit.media.rtp import RtpCollector
+from rtpaudit.media.selection import Selection, chosen
 from rtpaudit.media.streams import Stream
 from rtpaudit.profile import Profile
 from rtpaudit.signalling.collector import Signalling, SignallingCollector
@@ -96,6 +99,9 @@ def audit(
     profile: Profile | None = None,
     payload_types: Mapping[int, Encoding] | None = None,
     delay_ms: float | None = None,
+    select: Selection | None = None,
+    near: str | None = None,
+    digits: bool = False,
     progress: Progress | None = None,
 ) -> Audit:
     """Audit one capture or several.
@@ -110,6 +116,12 @@ def audit(
         Encoding by payload type, where no signalling tells.
     delay_ms : float, optional
         Known one-way delay of the network. [ms]
+    select : Selection, optional
+        Which calls to measure; the others are not, and ids are those of the whole audit.
+    near : str, optional
+        Address, or prefix, at which the capture was taken.
+    digits : bool
+        Whether to tell which keys were pressed; they are masked otherwise, as they may be a card number.
     progress : callable, optional
         Told how far reading has come.
 
@@ -117,12 +129,16 @@ def audit(
     ------
     UnreadableCapture
         If nothing at all can be read.
+    NothingChosen
+        If no call is what was selected.
+    UnusableArguments
+        If no call has an end at the address that is said to be near.
     """
     if not paths:
         raise UnusableArguments("no capture was given")
-    chosen = profile or Profile()
+    settings = profile or Profile()
     if delay_ms is not None:
-        chosen = replace(chosen, network=replace(chosen.network, delay_ms=delay_ms))
+        settings = replace(settings, network=replace(settings.network, delay_ms=delay_ms))
     recordings = open_recordings(paths)
     total = sum(len(file.octets) for recording in recordings for file in recording.files)
     heard: list[Heard] = []
@@ -130,19 +146,29 @@ def audit(
         done = sum(len(file.octets) for earlier in recordings[:number] for file in earlier.files)
         heard.append(_listen_to(recording, number, payload_types or {}, _from(progress, done, total)))
     streams = [stream for one in heard for stream in one.streams]
-    streams.sort(key=lambda stream: int(stream.packets.time_ns[0]))
-    calls = sorted((call for one in heard for call in one.calls), key=lambda call: call.started_ns)
+    calls = [call for one in heard for call in one.calls]
+    messages = [message for one in heard for message in one.signalling.messages]
+    name_all(streams, calls)
+    calls_in_all = len(calls)
+    if select:
+        calls = chosen(calls, select)
+        streams = streams_of(calls, streams)
+        messages = [message for call in calls if call.signalled for message in call.signalled.messages]
+    if near is not None:
+        note_near_ends(calls, near)
     buffers = [one.buffers for one in heard]
     assessment = assess(
         streams,
         calls,
-        chosen,
+        settings,
         buffers=buffers,
-        messages=[message for one in heard for message in one.signalling.messages],
+        messages=messages,
         captures=[file.name for recording in recordings for file in recording.files],
         damage=[row for one in heard for row in one.damage],
+        digits=digits,
     )
-    return Audit(assessment, SoundSource(buffers, assessment.streams, chosen.conceals_loss), chosen)
+    assessment.calls_in_all = calls_in_all
+    return Audit(assessment, SoundSource(buffers, assessment.streams, settings.conceals_loss), settings)
 
 
 def _from(progress: Progress | None, done: int, total: int) -> Callable[[int], None]:

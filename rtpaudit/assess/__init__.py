@@ -14,7 +14,6 @@ from rtpaudit.assess.stream import Measured, measure
 from rtpaudit.capture.frames import Damage, Octets
 from rtpaudit.media.calls import Call
 from rtpaudit.media.events import telephone_events
-from rtpaudit.media.join import conversations
 from rtpaudit.media.streams import Stream
 from rtpaudit.profile import Profile
 from rtpaudit.signalling.calls import SignallingMessage
@@ -28,11 +27,13 @@ def assess(
     messages: Sequence[SignallingMessage] = (),
     captures: Sequence[str] = (),
     damage: Sequence[Damage] = (),
+    digits: bool = False,
 ) -> Assessment:
     """Measure and rate every stream, then every call.
 
     ``streams`` come in the order in which they are numbered, and so do ``calls``, which refer to them. ``buffers`` are
-    the octets of each recording, ``messages`` what was said in all of them.
+    the octets of each recording, ``messages`` what was said in all of them. Without ``digits`` nothing of what is
+    handed on tells which keys were pressed.
     """
     measured = [measure(stream, profile) for stream in streams]
     rated = rate(streams, [one.path(profile) for one in measured], profile)
@@ -45,7 +46,7 @@ def assess(
     )
     assessed = [
         AssessedStream(
-            id=f"s{k + 1:02d}",
+            id=one.stream.id,
             call="",
             stream=one.stream,
             started_ns=one.started_ns,
@@ -61,17 +62,14 @@ def assess(
     ]
     by_stream = {id(one.stream): one for one in assessed}
     counted = counted_parts(calls, measured, rated, profile)
-    legs = conversations(calls)
     found = [
         assess_call(
-            k + 1,
-            legs[k] + 1,
             call,
             [by_stream[id(stream)] for stream in call.from_caller],
             [by_stream[id(stream)] for stream in call.from_callee],
             counted,
         )
-        for k, call in enumerate(calls)
+        for call in calls
     ]
     return Assessment(
         captures=list(captures),
@@ -82,7 +80,7 @@ def assess(
         events=[
             row
             for one in assessed
-            for row in event_rows(one.call, one.id, telephone_events(one.stream, buffers[one.stream.recording]))
+            for row in event_rows(one.call, one.id, telephone_events(one.stream, buffers[one.stream.recording]), digits)
         ],
     )
 

@@ -14,24 +14,21 @@ NAN = float("nan")
 
 
 def assess_call(
-    number: int,
-    conversation: int,
     call: Call,
     from_caller: list[AssessedStream],
     from_callee: list[AssessedStream],
     counted: Counted,
 ) -> AssessedCall:
-    """One call with its figures; ``number`` counts from 1."""
-    identifier = f"c{number:02d}"
+    """One call with its figures."""
     for stream in from_caller + from_callee:
-        stream.call = identifier
+        stream.call = call.id
     encodings = dict.fromkeys(one.stream.encoding for one in from_caller + from_callee)
     said = call.signalled
     answered_ns = said.answered_ns if said else None
     begun_ns = call.started_ns if answered_ns is None else answered_ns
     return AssessedCall(
-        id=identifier,
-        conversation=f"v{conversation:02d}",
+        id=call.id,
+        conversation=call.conversation,
         capture=call.capture,
         call_id=said.call_id if said else "",
         caller=call.caller,
@@ -50,6 +47,7 @@ def assess_call(
         figures=call_figures(from_caller, from_callee, counted),
         signalled=said,
         unseen=call.unseen,
+        near=call.near,
     )
 
 

@@ -36,14 +36,14 @@ def counted_parts(
 ) -> dict[str, CountedPart]:
     """What counts of every stream; a stream of which all counts keeps its own rating."""
     R = rated.parts.R
-    found = {f"s{k + 1:02d}": CountedPart(one.network.packets_expected, float(R[k])) for k, one in enumerate(measured)}
+    found = {one.stream.id: CountedPart(one.network.packets_expected, float(R[k])) for k, one in enumerate(measured)}
     place = {id(one.stream): k for k, one in enumerate(measured)}
     for call in calls:
         for stream in call.streams:
             k = place[id(stream)]
             windows = _counting_windows(call, measured[k])
             if not windows.all():
-                found[f"s{k + 1:02d}"] = _part(windows, measured[k], rated, k, profile)
+                found[stream.id] = _part(windows, measured[k], rated, k, profile)
     return found
 
 

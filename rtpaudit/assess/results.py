@@ -179,6 +179,8 @@ class AssessedCall:
     """what the endpoints said of it"""
     unseen: list[MediaTerm] = field(default_factory=list)
     """audio that a side asked for and that never came"""
+    near: str = ""
+    """side at which the user says that the capture was taken: caller, callee, unknown, or "" without such a word"""
 
     @property
     def streams(self) -> list[AssessedStream]:
@@ -197,6 +199,8 @@ class Assessment:
     messages: list[SignallingRow] = field(default_factory=list)
     """in order of time"""
     events: list[EventRow] = field(default_factory=list)
+    calls_in_all: int = 0
+    """before the audit was narrowed to some of them"""
     frames_dropped: dict[int, int] = field(default_factory=dict)
     """by recording: frames that the capture host itself says it dropped"""
 

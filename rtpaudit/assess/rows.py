@@ -67,8 +67,12 @@ def signalling_row(message: SignallingMessage, call: str) -> SignallingRow:
     )
 
 
-def event_rows(call: str, stream: str, events: Sequence[TelephoneEvent]) -> list[EventRow]:
-    """Telephone events of a stream as rows."""
+MASK = "x"
+"""stands for a key where it is not to be told which: keys may be a card number"""
+
+
+def event_rows(call: str, stream: str, events: Sequence[TelephoneEvent], digits: bool) -> list[EventRow]:
+    """Telephone events of a stream as rows; keys are masked unless ``digits`` are asked for."""
     return [
         EventRow(
             call=call,
@@ -76,7 +80,7 @@ def event_rows(call: str, stream: str, events: Sequence[TelephoneEvent]) -> list
             time_ns=event.time_ns,
             from_s=event.begin_s,
             event=event.name,
-            digit=event.digit,
+            digit=event.digit if digits or not event.digit else MASK,
             duration_ms=event.duration_ms,
             level_dbm0=event.level_dbm0,
             carried_as="event",

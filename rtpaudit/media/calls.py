@@ -27,6 +27,11 @@ class Call:
     """what the endpoints said of it"""
     unseen: list[MediaTerm] = field(default_factory=list)
     """audio that a side asked for and that never came"""
+    id: str = ""
+    conversation: str = ""
+    """id that its legs share"""
+    near: str = ""
+    """side at which the capture was taken, ``unknown`` where the user's word tells neither, "" without such a word"""
 
     @property
     def streams(self) -> list[Stream]:

@@ -86,3 +86,4 @@ class Stream:
     match_basis: str = ""
     encodings: Mapping[int, Encoding] = field(default_factory=dict)
     """encoding of every payload type that occurs"""
+    id: str = ""
