@@ -3,6 +3,7 @@
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, replace
 from functools import cached_property
+from itertools import islice
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
@@ -10,11 +11,13 @@ import numpy as np
 from numpy.typing import NDArray
 
 from rtpaudit.assess import assess
-from rtpaudit.assess.results import Assessment
+from rtpaudit.assess.reported import Reported
+from rtpaudit.assess.results import Assessment, RecordingFacts
 from rtpaudit.assess.sound import SoundSource
 from rtpaudit.capture import open_recordings
 from rtpaudit.capture.frames import Damage, Octets
 from rtpaudit.decode import Decoder
+from rtpaudit.decode.icmp import MOST_ERRORS, IcmpError, quoted
 from rtpaudit.errors import UnusableArguments
 from rtpaudit.media.agreed import Agreed
 from rtpaudit.media.calls import Call
@@ -28,6 +31,7 @@ from rtpaudit.media.streams import Stream
 from rtpaudit.profile import Profile
 from rtpaudit.signalling.collector import Signalling, SignallingCollector
 from rtpaudit.signalling.payload_types import Encoding
+from rtpaudit.signalling.reports import RtcpCollector
 
 if TYPE_CHECKING:
     from pandas import DataFrame
@@ -46,6 +50,8 @@ class Heard:
     streams: list[Stream]
     calls: list[Call]
     signalling: Signalling
+    reported: Reported
+    facts: RecordingFacts
     buffers: list[Octets]
     damage: list[Damage]
 
@@ -63,7 +69,8 @@ class Audit:
         """Every table by name."""
         from rtpaudit.report.tables import build_tables
 
-        return build_tables(self.assessment, signalling=self.assessment.messages, events=self.assessment.events)
+        found = self.assessment
+        return build_tables(found, signalling=found.messages, events=found.events, reports=found.reports)
 
     def __getattr__(self, name: str) -> Any:
         # Tables are attributes: audit.calls, audit.streams and so on, by the list of columns.py.
@@ -163,6 +170,9 @@ def audit(
         settings,
         buffers=buffers,
         messages=messages,
+        reported={number: one.reported for number, one in enumerate(heard)},
+        quality_reports=[report for one in heard for report in one.signalling.reports],
+        recordings=[one.facts for one in heard],
         captures=[file.name for recording in recordings for file in recording.files],
         damage=[row for one in heard for row in one.damage],
         digits=digits,
@@ -183,7 +193,8 @@ def _listen_to(
     recording: "Recording", number: int, given: Mapping[int, Encoding], progress: Callable[[int], None]
 ) -> Heard:
     """Walk one recording from its frames to its streams."""
-    decoder, collector, signalling = Decoder(), RtpCollector(), SignallingCollector()
+    decoder, collector, signalling, control = Decoder(), RtpCollector(), SignallingCollector(), RtcpCollector()
+    errors: list[IcmpError] = []
     buffers: list[Octets] = []
 
     def take(batches: Sequence[Any], octets: Octets | None, name: str) -> None:
@@ -195,6 +206,8 @@ def _listen_to(
             else:
                 collector.add(packets, here)
             signalling.add(packets, decoder.flows, name)
+            control.add(packets, decoder.flows, name)
+            errors.extend(islice(quoted(packets), MOST_ERRORS - len(errors)))
 
     passed = 0
     for file in recording.files:
@@ -217,5 +230,19 @@ def _listen_to(
         given=given,
         offered=agreed.offered(decoder.flows),
     )
-    calls = join(streams, said.calls, agreed, recording.name)
-    return Heard(streams, calls, said, buffers, [*recording.damage, *decoder.damage, *said.damage])
+    reports = control.finish()
+    facts = RecordingFacts(
+        name=recording.name,
+        interfaces=tuple(one for file in recording.files for one in file.interfaces),
+        unreachable=tuple(errors),
+        skipped=dict(decoder.skipped),
+    )
+    return Heard(
+        streams=streams,
+        calls=join(streams, said.calls, agreed, recording.name),
+        signalling=said,
+        reported=Reported(reports.datagrams),
+        facts=facts,
+        buffers=buffers,
+        damage=[*recording.damage, *decoder.damage, *said.damage, *reports.damage],
+    )

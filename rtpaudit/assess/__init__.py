@@ -1,22 +1,26 @@
 """Assess: streams and calls come in; their figures, rated and by window, go out."""
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from functools import partial
 
 import numpy as np
 
 from rtpaudit.assess.call import assess_call
 from rtpaudit.assess.counted import counted_parts
+from rtpaudit.assess.far_end import far_ends
 from rtpaudit.assess.rating import Rated, budgets, buffer_curve, rate, rate_windows
-from rtpaudit.assess.results import AssessedCall, AssessedStream, Assessment, WindowColumns
+from rtpaudit.assess.report_rows import far_end_rows, quality_rows
+from rtpaudit.assess.reported import Reported
+from rtpaudit.assess.results import AssessedCall, AssessedStream, Assessment, RecordingFacts, WindowColumns
 from rtpaudit.assess.rows import SignallingRow, event_rows, signalling_row
-from rtpaudit.assess.stream import Measured, measure
+from rtpaudit.assess.stream import Measured, measure, note_far_end
 from rtpaudit.capture.frames import Damage, Octets
 from rtpaudit.media.calls import Call
 from rtpaudit.media.events import telephone_events
 from rtpaudit.media.streams import Stream
 from rtpaudit.profile import Profile
 from rtpaudit.signalling.calls import SignallingMessage
+from rtpaudit.signalling.quality_reports import QualityReport
 
 
 def assess(
@@ -25,6 +29,9 @@ def assess(
     profile: Profile,
     buffers: Sequence[Sequence[Octets]] = (),
     messages: Sequence[SignallingMessage] = (),
+    reported: Mapping[int, Reported] | None = None,
+    quality_reports: Sequence[QualityReport] = (),
+    recordings: Sequence[RecordingFacts] = (),
     captures: Sequence[str] = (),
     damage: Sequence[Damage] = (),
     digits: bool = False,
@@ -36,6 +43,8 @@ def assess(
     handed on tells which keys were pressed.
     """
     measured = [measure(stream, profile) for stream in streams]
+    for one, far in zip(measured, far_ends(measured, calls, reported or {}), strict=True):
+        note_far_end(one, far)
     rated = rate(streams, [one.path(profile) for one in measured], profile)
     _note_ratings(measured, rated)
     windows = _windows(measured, rated, profile)
@@ -56,6 +65,7 @@ def assess(
             windows=windows[k],
             budget=steps[k],
             playback=one.playback,
+            far_end=one.far_end,
             work_out_curve=partial(buffer_curve, one.playback, rated, k, profile) if one.playback else None,
         )
         for k, one in enumerate(measured)
@@ -71,11 +81,14 @@ def assess(
         )
         for call in calls
     ]
+    rows = [row for one in assessed for row in far_end_rows(one)] + quality_rows(quality_reports, assessed)
     return Assessment(
+        recordings=list(recordings),
+        reports=rows,
         captures=list(captures),
         streams=assessed,
         calls=found,
-        damage=[*damage, *_cut_payloads(streams)],
+        damage=[*damage, *_cut_payloads(streams, buffers)],
         messages=_messages(messages, found),
         events=[
             row
@@ -85,12 +98,19 @@ def assess(
     )
 
 
-def _cut_payloads(streams: Sequence[Stream]) -> list[Damage]:
-    """What a snap length cut out of payloads, one row for each recording: the figures are whole, the sound is not."""
+def _cut_payloads(streams: Sequence[Stream], buffers: Sequence[Sequence[Octets]]) -> list[Damage]:
+    """What a snap length cut out of payloads, one row for each recording: the figures are whole, the sound is not.
+
+    A payload that the end of the file cuts is told where the file is read.
+    """
     counts: dict[str, tuple[int, int, int]] = {}
     for stream in streams:
         packets = stream.packets
-        cut = np.flatnonzero(packets.captured < packets.length)
+        if (packets.captured == packets.length).all():
+            continue
+        ends = np.array([len(octets) for octets in buffers[stream.recording]])
+        inside = packets.start + packets.captured < ends[packets.buffer]
+        cut = np.flatnonzero((packets.captured < packets.length) & inside)
         if len(cut):
             first, number, missing = counts.get(stream.capture, (int(packets.start[cut[0]]), 0, 0))
             octets = int((packets.length[cut] - packets.captured[cut]).sum())

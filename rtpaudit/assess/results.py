@@ -1,14 +1,16 @@
 """What assess hands on: figures of streams and calls under the names of the columns that people read."""
 
-from collections.abc import Callable
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass, field, fields
 
 import numpy as np
 from numpy.typing import NDArray
 
 from rtpaudit.assess.playback import Playback
-from rtpaudit.assess.rows import EventRow, SignallingRow
-from rtpaudit.capture.frames import Damage
+from rtpaudit.assess.reported import FarEnd
+from rtpaudit.assess.rows import EventRow, ReportRow, SignallingRow
+from rtpaudit.capture.frames import Damage, Interface
+from rtpaudit.decode.icmp import IcmpError
 from rtpaudit.emodel.budget import Budget
 from rtpaudit.media.streams import Stream
 from rtpaudit.signalling.calls import MediaTerm, SipCall
@@ -125,6 +127,8 @@ class AssessedStream:
     """how the rating goes from Ro down to R; NaN throughout where there is none"""
     playback: Playback | None = None
     """None where the stream has no audio or no known clock"""
+    far_end: FarEnd | None = None
+    """what the far receiver reported, None where it said nothing"""
     work_out_curve: Callable[[], BufferCurve] | None = None
     """None where there is no playback"""
     _curve: BufferCurve | None = None
@@ -188,6 +192,19 @@ class AssessedCall:
         return sorted(self.from_caller + self.from_callee, key=lambda one: int(one.id[1:]))
 
 
+@dataclass(frozen=True, slots=True)
+class RecordingFacts:
+    """What is known of one recording besides its packets."""
+
+    name: str
+    interfaces: tuple[Interface, ...] = ()
+    """of all its files, with the counts of the capture host where it gave any"""
+    unreachable: tuple[IcmpError, ...] = ()
+    """ICMP errors on UDP: who refused what"""
+    skipped: Mapping[str, int] = field(default_factory=dict)
+    """frames that carried no UDP, TCP or ICMP, by reason"""
+
+
 @dataclass(slots=True)
 class Assessment:
     """All that one audit found out, before findings."""
@@ -199,6 +216,8 @@ class Assessment:
     messages: list[SignallingRow] = field(default_factory=list)
     """in order of time"""
     events: list[EventRow] = field(default_factory=list)
+    reports: list[ReportRow] = field(default_factory=list)
+    recordings: list[RecordingFacts] = field(default_factory=list)
     calls_in_all: int = 0
     """before the audit was narrowed to some of them"""
     frames_dropped: dict[int, int] = field(default_factory=dict)

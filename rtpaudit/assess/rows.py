@@ -46,6 +46,42 @@ class EventRow:
     end_seen: bool | None
 
 
+NAN = float("nan")
+
+
+@dataclass(slots=True)
+class ReportRow:
+    """One report of a far end on one stream."""
+
+    call: str
+    stream: str
+    time_ns: int
+    report: str
+    reporter: str
+    reporter_ssrc: str
+    interval_s: float = NAN
+    packets_expected: int | None = None
+    loss_pct: float = NAN
+    captured_loss_pct: float = NAN
+    packets_lost: int | None = None
+    jitter_ms: float = NAN
+    round_trip_ms: float = NAN
+    discard_pct: float = NAN
+    burst_density_pct: float = NAN
+    burst_duration_ms: float = NAN
+    gap_density_pct: float = NAN
+    gap_duration_ms: float = NAN
+    end_system_delay_ms: float = NAN
+    signal_level_dbm0: float = NAN
+    noise_level_dbm0: float = NAN
+    echo_return_loss_db: float = NAN
+    r_factor: float = NAN
+    mos_lq: float = NAN
+    mos_cq: float = NAN
+    playout_delay_ms: float = NAN
+    set_aside: str = ""
+
+
 def signalling_row(message: SignallingMessage, call: str) -> SignallingRow:
     """A message as a row; ``call`` is "" where it belongs to none."""
     return SignallingRow(

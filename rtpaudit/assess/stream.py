@@ -7,6 +7,7 @@ from numpy.typing import NDArray
 
 from rtpaudit.assess.playback import Playback, is_audio, play_back
 from rtpaudit.assess.rating import Path
+from rtpaudit.assess.reported import FarEnd
 from rtpaudit.assess.results import STREAM_FIGURES, GapColumns, StreamFigures
 from rtpaudit.media.streams import Stream
 from rtpaudit.metrics.network import NetworkFigures, network_figures
@@ -23,6 +24,7 @@ class Measured:
     network: NetworkFigures
     figures: StreamFigures
     playback: Playback | None
+    far_end: FarEnd | None = None
 
     @property
     def gaps(self) -> GapColumns:
@@ -35,11 +37,13 @@ class Measured:
     def path(self, profile: Profile) -> Path:
         """What the rating asks of this stream."""
         given = profile.network.delay_ms
+        trip = float("nan") if self.far_end is None else self.far_end.round_trip_ms
+        measured = given is None and not np.isnan(trip)
         return Path(
             loss_pct=self.figures.loss_pct + (self.playback.discard_pct if self.playback else 0.0),
             burst_ratio=self.figures.burst_ratio,
-            network_ms=float("nan") if given is None else given,
-            network_basis="" if given is None else "given",
+            network_ms=trip / 2.0 if given is None else given,
+            network_basis="rtcp" if measured else "" if given is None else "given",
             playout_ms=self.figures.playout_delay_ms,
         )
 
@@ -81,6 +85,17 @@ def _note_playback(figures: StreamFigures, playback: Playback) -> None:
     figures.burst_duration_ms = playback.burst_gap.burst_duration_ms
     figures.gap_density_pct = playback.burst_gap.gap_density_pct
     figures.gap_duration_ms = playback.burst_gap.gap_duration_ms
+
+
+def note_far_end(one: Measured, far: FarEnd | None) -> None:
+    """Take what was reported on a stream into its figures."""
+    one.far_end = far
+    if far is not None:
+        one.figures.reported_loss_pct = far.reported_loss_pct
+        one.figures.reported_jitter_ms = far.reported_jitter_ms
+        one.figures.round_trip_ms = far.round_trip_ms
+        one.figures.loss_before_pct = far.loss_before_pct
+        one.figures.loss_after_pct = far.loss_after_pct
 
 
 def clock_rates(stream: Stream) -> NDArray[np.int32] | int:

@@ -11,6 +11,7 @@ from rtpaudit.media.agreed import Agreed, Agreement
 from rtpaudit.media.calls import Call, pair_streams
 from rtpaudit.media.streams import Stream
 from rtpaudit.signalling.calls import CALLEE, CALLER, MediaTerm, SipCall
+from rtpaudit.signalling.conversations import conversations as conversations_of_dialogs
 
 OTHER = {CALLER: CALLEE, CALLEE: CALLER}
 Ends = tuple[str, int, str, int]
@@ -136,8 +137,11 @@ def _unseen(term: MediaTerm, call: Call) -> bool:
 def conversations(calls: Sequence[Call]) -> list[int]:
     """Number of the conversation of each call; calls whose media, parties or session say so are legs of one.
 
-    Evidence is a Session-ID (RFC 7989) or Call-ID in common, or one SSRC that both carry at the same time.
+    Evidence is what the signalling room finds (Session-ID of RFC 7989, same parties at the same time), a Call-ID in
+    common, or one SSRC that both carry at the same time.
     """
+    signalled = [call.signalled for call in calls if call.signalled is not None]
+    said = dict(zip(map(id, signalled), conversations_of_dialogs(signalled), strict=True))
     number = list(range(len(calls)))
 
     def root(k: int) -> int:
@@ -147,7 +151,7 @@ def conversations(calls: Sequence[Call]) -> list[int]:
 
     seen: dict[object, list[int]] = defaultdict(list)
     for k, call in enumerate(calls):
-        for evidence in _evidence(call):
+        for evidence in _evidence(call) | {("said", said[id(one)]) for one in (call.signalled,) if one is not None}:
             for other in seen[evidence][-RECENT:]:
                 if _together(calls[other], call):
                     number[max(root(k), root(other))] = min(root(k), root(other))
@@ -160,7 +164,6 @@ def _evidence(call: Call) -> set[object]:
     found: set[object] = {("ssrc", stream.ssrc, stream.encoding) for stream in call.streams if stream.ssrc}
     if call.signalled is not None:
         found.add(("call", call.signalled.call_id))
-        found |= {("session", one) for one in call.signalled.session_ids}
     return found
 
 
