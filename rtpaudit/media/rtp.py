@@ -104,23 +104,25 @@ class RtpCollector:
             chosen, header, padding, group = chosen[good], header[good], padding[good], group[good]
             sequence, timestamp = sequence[good], timestamp[good]
             second, fingerprint = second[good], fingerprint[good]
-        length = packets.length[chosen] - header - padding
+        # Where every row is taken, as in most batches, the columns need no copy.
+        taken: slice | NDArray[np.int64] = slice(None) if len(chosen) == len(packets) else chosen
+        length = packets.length[taken] - header - padding
         rows = {
-            "time_ns": packets.time_ns[chosen],
-            "frame": packets.frame[chosen],
+            "time_ns": packets.time_ns[taken],
+            "frame": packets.frame[taken],
             "buffer": np.full(len(chosen), buffer, np.uint16),
-            "start": packets.start[chosen] + header,
+            "start": packets.start[taken] + header,
             "length": length,
-            "captured": np.clip(packets.captured[chosen] - header, 0, length),
+            "captured": np.minimum(np.maximum(packets.captured[taken] - header, 0), length),
             "sequence": sequence,
             "timestamp": timestamp,
             "payload_type": second & np.uint8(0x7F),
             "marker": second >= 0x80,
-            "dscp": packets.dscp[chosen],
-            "ttl": packets.ttl[chosen],
-            "ip_id": packets.ip_id[chosen],
-            "vlan": packets.vlan[chosen],
-            "interface": packets.interface[chosen],
+            "dscp": packets.dscp[taken],
+            "ttl": packets.ttl[taken],
+            "ip_id": packets.ip_id[taken],
+            "vlan": packets.vlan[taken],
+            "interface": packets.interface[taken],
             "fingerprint": fingerprint,
             "group": group,
         }
