@@ -15,7 +15,8 @@ from tests.report import made
 
 COMMANDS = {"triage", "demo", "explain"}
 TRIAGE_OPTIONS = {
-    "--out", "--payload-type", "--delay", "--profile", "--zone", "--private", "--quiet", "--json", "--fail-below",
+    "--out", "--payload-type", "--delay", "--profile", "--zone", "--private", "--digits", "--quiet", "--json",
+    "--fail-below", "--party", "--at", "--call", "--near",
 }  # fmt: skip
 
 COLUMNS = {

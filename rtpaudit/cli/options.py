@@ -28,7 +28,12 @@ ProfileFile = Annotated[
     typer.Option("--profile", metavar="FILE", help="Playout buffer, planning values and limits, as TOML."),
 ]
 Zone = Annotated[str | None, typer.Option("--zone", metavar="NAME", help="Time zone to show times in: Europe/Vienna.")]
-Private = Annotated[bool, typer.Option("--private", help="Pseudonyms for parties and addresses, no sound.")]
+Near = Annotated[
+    str | None,
+    typer.Option("--near", metavar="ADDRESS", help="Address, or prefix, of the end at which the capture was taken."),
+]
+Private = Annotated[bool, typer.Option("--private", help="Pseudonyms for parties and addresses, no digits, no sound.")]
+Digits = Annotated[bool, typer.Option("--digits", help="Show the digits dialled within calls; masked by x otherwise.")]
 Quiet = Annotated[bool, typer.Option("--quiet", help="No summary and no progress.")]
 Json = Annotated[bool, typer.Option("--json", help="The summary on standard output as JSON, and nothing else.")]
 FailBelow = Annotated[
@@ -74,6 +79,12 @@ def fail_below(limit: float | None) -> float | None:
     if limit is not None and not 0.0 <= limit <= 100.0:
         raise UnusableArguments(f"--fail-below {limit:g} is not within 0 to 100, where ratings lie")
     return limit
+
+
+def refuse_digits(private: bool, digits: bool) -> None:
+    """Digits are never shown where a report is private."""
+    if private and digits:
+        raise UnusableArguments("--private shows no digits; leave out --digits")
 
 
 def profile(path: Path | None) -> "Profile":

@@ -35,11 +35,12 @@ def as_text(written: Written, assessment: Assessment, zone: tzinfo | None, colum
     sides = {one.id: (one.from_callee, one.from_caller) for one in assessment.calls}
     blocks = [_call(call, sides[call.call], streams, zone, columns) for _, call in calls[:LISTED_CALLS].iterrows()]
     notes = [*_rest(calls[LISTED_CALLS:]), *_notes(written, streams), *_meaning(calls), _place(written), MIND]
-    opening, closing = ("\n".join(fill(one, columns) for one in part) for part in (_heading(written, zone), notes))
+    heading = _heading(written, assessment.calls_in_all, zone)
+    opening, closing = ("\n".join(fill(one, columns) for one in part) for part in (heading, notes))
     return "\n\n".join([opening, *blocks, closing])
 
 
-def as_json(written: Written, limit: float | None, broken: Mapping[str, float]) -> str:
+def as_json(written: Written, calls_in_all: int, limit: float | None, broken: Mapping[str, float]) -> str:
     """The summary for programs: one object, calls with the worst first."""
     tables = written.tables
     head = {
@@ -48,6 +49,7 @@ def as_json(written: Written, limit: float | None, broken: Mapping[str, float]) 
         "rtpaudit": __version__,
         "folder": str(written.folder),
         "captures": written.captures,
+        "calls_in_all": calls_in_all,
         "streams": len(tables["streams"]),
         "packets": int(tables["streams"].packets_captured.sum()),
         "audio_files": written.audio_files,
@@ -70,7 +72,7 @@ def figure(value: float) -> str:
     return f"{value:,.0f}" if abs(value) >= 100 else f"{value:.3g}"
 
 
-def _heading(written: Written, zone: tzinfo | None) -> list[str]:
+def _heading(written: Written, calls_in_all: int, zone: tzinfo | None) -> list[str]:
     names = visible(", ".join(written.captures[:LISTED_CAPTURES]))
     if len(written.captures) > LISTED_CAPTURES:
         names += f" and {len(written.captures) - LISTED_CAPTURES} more"
@@ -78,7 +80,12 @@ def _heading(written: Written, zone: tzinfo | None) -> list[str]:
     if not len(streams):
         return [f"{names}: no stream of RTP was found."]
     packets = int(streams.packets_captured.sum())
-    counts = [_many(len(calls), "call"), _many(len(streams), "stream"), _many(packets, "packet")]
+    narrowed = f"{len(calls):,} of " if len(calls) < calls_in_all else ""
+    counts = [
+        narrowed + _many(max(len(calls), calls_in_all), "call"),
+        _many(len(streams), "stream"),
+        _many(packets, "packet"),
+    ]
     begin, end = _local(streams.started.min(), zone), _local(streams.ended.max(), zone)
     until = f"{end:%H:%M:%S}" if begin.date() == end.date() else f"{end:%Y-%m-%d %H:%M:%S}"
     when = f"{begin:%Y-%m-%d %H:%M:%S} to {until} {_zone_name(begin, zone)}."

@@ -4,11 +4,13 @@ from collections.abc import Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING
 
-from rtpaudit.cli import options
+from rtpaudit.cli import narrowing, options
 from rtpaudit.cli.start import settle
 from rtpaudit.cli.terminal import Bar, complain, say, width
+from rtpaudit.errors import NothingChosen
 
 if TYPE_CHECKING:
+    from rtpaudit.media.selection import Selection
     from rtpaudit.profile import Profile
     from rtpaudit.report.folder import Written
     from rtpaudit.signalling.payload_types import Encoding
@@ -24,7 +26,12 @@ def triage(
     delay: options.Delay = None,
     profile: options.ProfileFile = None,
     zone: options.Zone = None,
+    party: narrowing.Parties = None,
+    at: narrowing.At = None,
+    call: narrowing.Calls = None,
+    near: options.Near = None,
     private: options.Private = False,
+    digits: options.Digits = False,
     quiet: options.Quiet = False,
     json: options.Json = False,
     fail_below: options.FailBelow = None,
@@ -33,19 +40,24 @@ def triage(
     from rtpaudit.report.folder import refuse_foreign
 
     limit, where = options.fail_below(fail_below), options.zone(zone)
+    options.refuse_digits(private, digits)
+    wanted = narrowing.selection(party, at, call, where)
     given, chosen, known_delay = options.payload_types(payload_type), options.profile(profile), options.delay_ms(delay)
     folder = out or options.folder_for(captures)
     # Now, and not after a long walk.
     refuse_foreign(folder)
     with Bar(shown=not quiet and not json) as bar:
-        audit = _audit(captures, chosen, given, known_delay, bar, quiet)
+        try:
+            audit = _audit(captures, chosen, given, known_delay, wanted, near, digits, bar, quiet)
+        except NothingChosen as fault:
+            raise narrowing.nothing_chosen(fault, where, private) from fault
         written = _write(audit, folder, private, bar)
     broken = _below(written, limit)
 
     from rtpaudit.cli.summary import as_json, as_text
 
     if json:
-        say(as_json(written, limit, broken))
+        say(as_json(written, audit.assessment.calls_in_all, limit, broken))
     elif not quiet:
         say(as_text(written, audit.assessment, where, width()))
     if broken:
@@ -58,6 +70,9 @@ def _audit(
     profile: "Profile",
     payload_types: "dict[int, Encoding]",
     delay_ms: float | None,
+    select: "Selection | None",
+    near: str | None,
+    digits: bool,
     bar: Bar,
     quiet: bool,
 ) -> "Audit":
@@ -68,7 +83,16 @@ def _audit(
     settle()
     if not quiet:
         on_first_compilation(lambda: complain(COMPILING))
-    return audit(*captures, profile=profile, payload_types=payload_types, delay_ms=delay_ms, progress=bar.reading)
+    return audit(
+        *captures,
+        profile=profile,
+        payload_types=payload_types,
+        delay_ms=delay_ms,
+        select=select,
+        near=near,
+        digits=digits,
+        progress=bar.reading,
+    )
 
 
 def _write(audit: "Audit", folder: Path, private: bool, bar: Bar) -> "Written":

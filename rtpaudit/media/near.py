@@ -9,7 +9,6 @@ from rtpaudit.media.selection import host_of
 from rtpaudit.signalling.calls import CALLEE, CALLER
 
 UNKNOWN = "unknown"
-SHOWN = 5
 
 
 def note_near_ends(calls: Sequence[Call], near: str) -> None:
@@ -30,8 +29,7 @@ def note_near_ends(calls: Sequence[Call], near: str) -> None:
         here = [side for side in (CALLER, CALLEE) if any(map(_within(network), _addresses(call, side)))]
         call.near = here[0] if len(here) == 1 else UNKNOWN
     if calls and all(call.near == UNKNOWN for call in calls):
-        there = dict.fromkeys(host for call in calls for side in (CALLER, CALLEE) for host in _addresses(call, side))
-        raise UnusableArguments(f"no call has just one end at {near}; ends are at {', '.join(list(there)[:SHOWN])}")
+        raise UnusableArguments("no call has just one end at the address said to be near; streams.csv lists addresses")
 
 
 def _within(network: IPv4Network | IPv6Network) -> Callable[[str], bool]:

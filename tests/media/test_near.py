@@ -34,8 +34,8 @@ def test_the_side_that_has_the_address_is_near(near: str, sides: list[str]) -> N
 
 
 @pytest.mark.parametrize("near", ["192.0.2.11", "203.0.113.0/24", "2001:db8::1"])
-def test_an_address_that_is_no_calls_end_is_refused_with_those_that_are(near: str) -> None:
-    with pytest.raises(UnusableArguments, match=r"192\.0\.2\.10"):
+def test_an_address_that_is_no_calls_end_is_refused(near: str) -> None:
+    with pytest.raises(UnusableArguments, match="no call has just one end"):
         note_near_ends(calls(), near)
 
 
