@@ -85,6 +85,7 @@ def assess(
     return Assessment(
         recordings=list(recordings),
         reports=rows,
+        reported=reported or {},
         captures=list(captures),
         streams=assessed,
         calls=found,

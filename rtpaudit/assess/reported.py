@@ -144,6 +144,13 @@ class Reported:
         """Voice-quality blocks on a stream by its receiver, by time."""
         return self._of(stream, self._about[stream.ssrc].metrics) if stream.ssrc in self._about else []
 
+    def blocks_from(self, host: str) -> list[Said]:
+        """Reception reports that a host sent, on streams that were captured and on others, by time."""
+        return sorted(
+            (one for about in self._about.values() for one in about.blocks if one.source == host),
+            key=lambda one: one.time_ns,
+        )
+
     def _of(self, stream: Stream, said: Sequence[Said]) -> list[Said]:
         """Those that came from the stream's receiver to its sender; where the addresses tell nothing, from one host."""
         begin, end = int(stream.packets.time_ns[0]) - BEFORE_NS, int(stream.packets.time_ns[-1]) + AFTER_NS

@@ -7,7 +7,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from rtpaudit.assess.playback import Playback
-from rtpaudit.assess.reported import FarEnd
+from rtpaudit.assess.reported import FarEnd, Reported
 from rtpaudit.assess.rows import EventRow, ReportRow, SignallingRow
 from rtpaudit.capture.frames import Damage, Interface
 from rtpaudit.decode.icmp import IcmpError
@@ -220,8 +220,8 @@ class Assessment:
     recordings: list[RecordingFacts] = field(default_factory=list)
     calls_in_all: int = 0
     """before the audit was narrowed to some of them"""
-    frames_dropped: dict[int, int] = field(default_factory=dict)
-    """by recording: frames that the capture host itself says it dropped"""
+    reported: Mapping[int, Reported] = field(default_factory=dict)
+    """the RTCP of each recording, also on streams that the capture does not hold"""
 
 
 STREAM_FIGURES = tuple(one.name for one in fields(StreamFigures))
