@@ -19,6 +19,8 @@ UNKNOWN = Encoding("unknown", 0, 0)
 VIDEO_CLOCK_HZ = 90_000
 LARGEST_AUDIO_FRAME_OCTETS = 320
 """of what the speech payload formats put into one packet of 20 ms, PCM at 8 kHz included (common practice)"""
+ENOUGH_PACKETS = 10
+"""to infer a clock from, beside the audio of most packets"""
 HIGHEST_TELEPHONE_EVENT = 16
 """RFC 4733, 3.2: sixteen digits and the hook flash; the codes above belong to other equipment."""
 CONTENT_OF = {
@@ -81,15 +83,16 @@ def meaning_of(
     main = max(audio, key=lambda number: (counts[number], -number))
     step = _usual_step(rows, span)
     media = encodings[main].media
-    if encodings[main].clock_rate_hz == 0:
-        mine = span.start + np.flatnonzero(types == main)
-        rate = infer_clock_rate(rows.time_ns[mine], rows.timestamp[mine])
-        if encodings[main].name == "unknown" and _frames_over_several_packets(rows, span):
-            rate, media = VIDEO_CLOCK_HZ, "video"
-        for number, encoding in encodings.items():
-            if encoding.clock_rate_hz == 0:
-                sampling = 0 if encoding.name == "unknown" else rate
-                encodings[number] = replace(encoding, clock_rate_hz=rate, sampling_rate_hz=sampling, media=media)
+    if encodings[main].name == "unknown" and _frames_over_several_packets(rows, span):
+        media = "video"
+    for number, encoding in encodings.items():
+        # A source may change to another clock in mid-call; a few packets tell none.
+        unknown = encoding.name == "unknown" and counts[number] >= ENOUGH_PACKETS
+        if encoding.clock_rate_hz == 0 and (unknown or number == main):
+            mine = span.start + np.flatnonzero(types == number)
+            rate = VIDEO_CLOCK_HZ if media == "video" else infer_clock_rate(rows.time_ns[mine], rows.timestamp[mine])
+            sampling = 0 if encoding.name == "unknown" else rate
+            encodings[number] = replace(encoding, clock_rate_hz=rate, sampling_rate_hz=sampling, media=media)
     for number, encoding in encodings.items():
         if encoding.clock_rate_hz == 0:
             encodings[number] = replace(encoding, clock_rate_hz=encodings[main].clock_rate_hz)

@@ -76,6 +76,15 @@ def test_the_clock_of_a_dynamic_type_is_inferred_and_said_to_be():
     assert stream.packet_time_ms == 20.0
 
 
+def test_a_change_to_a_type_of_another_clock_is_followed():
+    made = talk(range(100))
+    for n in range(100, 150):
+        made.add(20.0 * n, rtp(bytes(70), n, 960 * n, payload_type=111))
+    (stream,) = made.streams()
+    assert (stream.payload_type, stream.clock_rate_hz) == (0, 8000)
+    assert stream.encodings[111].clock_rate_hz == 48000
+
+
 def test_the_users_word_on_a_payload_type_counts():
     made = Datagrams()
     for n in range(100):
