@@ -4,15 +4,18 @@ from collections.abc import Mapping, Sequence
 from functools import partial
 
 import numpy as np
+from numpy.typing import NDArray
 
 from rtpaudit.assess.call import assess_call
 from rtpaudit.assess.counted import counted_parts
 from rtpaudit.assess.far_end import far_ends
+from rtpaudit.assess.hearing import StreamSound
+from rtpaudit.assess.listening import listen_to
 from rtpaudit.assess.rating import Rated, budgets, buffer_curve, rate, rate_windows
 from rtpaudit.assess.report_rows import far_end_rows, quality_rows
 from rtpaudit.assess.reported import Reported
 from rtpaudit.assess.results import AssessedCall, AssessedStream, Assessment, RecordingFacts, WindowColumns
-from rtpaudit.assess.rows import SignallingRow, event_rows, signalling_row
+from rtpaudit.assess.rows import SignallingRow, event_rows, signalling_row, tone_rows
 from rtpaudit.assess.stream import Measured, measure, note_far_end
 from rtpaudit.capture.frames import Damage, Octets
 from rtpaudit.media.calls import Call
@@ -35,16 +38,18 @@ def assess(
     captures: Sequence[str] = (),
     damage: Sequence[Damage] = (),
     digits: bool = False,
+    sound: bool = True,
 ) -> Assessment:
     """Measure and rate every stream, then every call.
 
     ``streams`` come in the order in which they are numbered, and so do ``calls``, which refer to them. ``buffers`` are
     the octets of each recording, ``messages`` what was said in all of them. Without ``digits`` nothing of what is
-    handed on tells which keys were pressed.
+    handed on tells which keys were pressed. Without ``sound`` no payload is looked at.
     """
     measured = [measure(stream, profile) for stream in streams]
     for one, far in zip(measured, far_ends(measured, calls, reported or {}), strict=True):
         note_far_end(one, far)
+    pairs = listen_to(measured, calls, buffers, profile) if sound else {}
     rated = rate(streams, [one.path(profile) for one in measured], profile)
     _note_ratings(measured, rated)
     windows = _windows(measured, rated, profile)
@@ -66,6 +71,8 @@ def assess(
             budget=steps[k],
             playback=one.playback,
             far_end=one.far_end,
+            sound=one.sound,
+            signs=one.signs,
             work_out_curve=partial(buffer_curve, one.playback, rated, k, profile) if one.playback else None,
         )
         for k, one in enumerate(measured)
@@ -78,6 +85,7 @@ def assess(
             [by_stream[id(stream)] for stream in call.from_caller],
             [by_stream[id(stream)] for stream in call.from_callee],
             counted,
+            pairs.get(id(call)),
         )
         for call in calls
     ]
@@ -94,7 +102,10 @@ def assess(
         events=[
             row
             for one in assessed
-            for row in event_rows(one.call, one.id, telephone_events(one.stream, buffers[one.stream.recording]), digits)
+            for row in (
+                *event_rows(one.call, one.id, telephone_events(one.stream, buffers[one.stream.recording]), digits),
+                *tone_rows(one, digits),
+            )
         ],
     )
 
@@ -162,7 +173,6 @@ def _windows(measured: Sequence[Measured], rated: Rated, profile: Profile) -> li
         loss = 100.0 * np.concatenate([np.empty(0), *missed]) / expected
     R = rate_windows(loss, np.repeat(np.arange(len(found)), counts), rated, profile)
     edges = np.concatenate([[0], np.cumsum(counts)])
-    nothing = np.full(int(counts.max(initial=0)), np.nan)
     return [
         WindowColumns(
             from_s=one.from_s,
@@ -173,8 +183,17 @@ def _windows(measured: Sequence[Measured], rated: Rated, profile: Profile) -> li
             jitter_ms=one.jitter_ms,
             pdv_p95_ms=one.pdv_p95_ms,
             r_factor=R[edges[k] : edges[k + 1]],
-            activity_pct=nothing[: counts[k]],
-            level_dbov=nothing[: counts[k]],
+            activity_pct=_fitted(measured[k].sound, "activity_pct", len(one.from_s)),
+            level_dbov=_fitted(measured[k].sound, "level_dbov", len(one.from_s)),
         )
         for k, one in enumerate(found)
     ]
+
+
+def _fitted(sound: StreamSound | None, name: str, windows: int) -> NDArray[np.float64]:
+    """A figure of the sound by window, NaN where the timeline has ended or was not looked at."""
+    fitted = np.full(windows, np.nan)
+    if sound is not None:
+        found = getattr(sound.windows, name)[:windows]
+        fitted[: len(found)] = found
+    return fitted

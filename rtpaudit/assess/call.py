@@ -4,6 +4,7 @@ import math
 from collections.abc import Sequence
 
 from rtpaudit.assess.counted import Counted
+from rtpaudit.assess.pairs import CallSound
 from rtpaudit.assess.results import AssessedCall, AssessedStream, CallFigures
 from rtpaudit.emodel.g107 import mos_from_r
 from rtpaudit.emodel.g109 import quality_band
@@ -18,6 +19,7 @@ def assess_call(
     from_caller: list[AssessedStream],
     from_callee: list[AssessedStream],
     counted: Counted,
+    sound: CallSound | None = None,
 ) -> AssessedCall:
     """One call with its figures."""
     for stream in from_caller + from_callee:
@@ -47,6 +49,7 @@ def assess_call(
         figures=call_figures(from_caller, from_callee, counted),
         signalled=said,
         unseen=call.unseen,
+        sound=sound,
         near=call.near,
     )
 

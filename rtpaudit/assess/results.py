@@ -6,6 +6,8 @@ from dataclasses import dataclass, field, fields
 import numpy as np
 from numpy.typing import NDArray
 
+from rtpaudit.assess.hearing import PayloadSigns, StreamSound
+from rtpaudit.assess.pairs import CallSound
 from rtpaudit.assess.playback import Playback
 from rtpaudit.assess.reported import FarEnd, Reported
 from rtpaudit.assess.rows import EventRow, ReportRow, SignallingRow
@@ -129,6 +131,10 @@ class AssessedStream:
     """None where the stream has no audio or no known clock"""
     far_end: FarEnd | None = None
     """what the far receiver reported, None where it said nothing"""
+    sound: StreamSound | None = None
+    """None where the sound was not looked at, or cannot be decoded"""
+    signs: PayloadSigns | None = None
+    """of the payload octets; None where they were not looked at"""
     work_out_curve: Callable[[], BufferCurve] | None = None
     """None where there is no playback"""
     _curve: BufferCurve | None = None
@@ -183,6 +189,8 @@ class AssessedCall:
     """what the endpoints said of it"""
     unseen: list[MediaTerm] = field(default_factory=list)
     """audio that a side asked for and that never came"""
+    sound: CallSound | None = None
+    """what only both directions together tell; None without sound both ways"""
     near: str = ""
     """side at which the user says that the capture was taken: caller, callee, unknown, or "" without such a word"""
 

@@ -2,9 +2,17 @@
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import TYPE_CHECKING
 
+from rtpaudit.audio.digits import Digit
+from rtpaudit.audio.level import dbm0
+from rtpaudit.audio.progress import ProgressTone
 from rtpaudit.media.events import TelephoneEvent
 from rtpaudit.signalling.calls import SignallingMessage
+from rtpaudit.units import MS_PER_S, NS_PER_S
+
+if TYPE_CHECKING:
+    from rtpaudit.assess.results import AssessedStream
 
 
 @dataclass(slots=True)
@@ -125,3 +133,32 @@ def event_rows(call: str, stream: str, events: Sequence[TelephoneEvent], digits:
         )
         for event in events
     ]
+
+
+def tone_rows(one: "AssessedStream", digits: bool) -> list[EventRow]:
+    """Keys and call-progress tones heard in the sound of a stream as rows."""
+    sound = one.sound
+    if sound is None:
+        return []
+    offset_s = (sound.origin_ns - one.started_ns) / NS_PER_S
+    heard: list[tuple[Digit | ProgressTone, str, str]] = [
+        *((one_digit, "digit", one_digit.digit if digits else MASK) for one_digit in sound.digits),
+        *((tone, tone.name, "") for tone in sound.tones),
+    ]
+    rows = [
+        EventRow(
+            call=one.call,
+            stream=one.id,
+            time_ns=sound.origin_ns + round(row.from_s * NS_PER_S),
+            from_s=row.from_s + offset_s,
+            event=name,
+            digit=digit,
+            duration_ms=(row.to_s - row.from_s) * MS_PER_S,
+            level_dbm0=dbm0(row.level_dbov, one.stream.encoding),
+            carried_as="tone",
+            packets=None,
+            end_seen=None,
+        )
+        for row, name, digit in heard
+    ]
+    return sorted(rows, key=lambda row: row.time_ns)

@@ -5,6 +5,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from rtpaudit.assess.hearing import PayloadSigns, StreamSound
 from rtpaudit.assess.playback import Playback, is_audio, play_back
 from rtpaudit.assess.rating import Path
 from rtpaudit.assess.reported import FarEnd
@@ -25,6 +26,10 @@ class Measured:
     figures: StreamFigures
     playback: Playback | None
     far_end: FarEnd | None = None
+    sound: StreamSound | None = None
+    signs: PayloadSigns | None = None
+    telr_db: float = float("nan")
+    """talker echo loudness rating of the listener, NaN where no echo is sure [dB]"""
 
     @property
     def gaps(self) -> GapColumns:
@@ -45,6 +50,7 @@ class Measured:
             network_ms=trip / 2.0 if given is None else given,
             network_basis="rtcp" if measured else "" if given is None else "given",
             playout_ms=self.figures.playout_delay_ms,
+            telr_db=self.telr_db,
         )
 
 

@@ -1,0 +1,143 @@
+"""Streams at the audio bench: what the sound of each is like, and what is wrong with its payload."""
+
+from collections.abc import Sequence
+from dataclasses import dataclass, field
+
+import numpy as np
+from numpy.typing import NDArray
+
+from rtpaudit.assess.playback import is_audio, packet_ticks
+from rtpaudit.audio.clipping import Clipping, clipping_of
+from rtpaudit.audio.digits import Digit, digits_of
+from rtpaudit.audio.encryption import Cipher, CipherVerdict, cipher_of
+from rtpaudit.audio.law import LawVerdict, law_of
+from rtpaudit.audio.level import SpeechLevel, WindowLevels, level_of, noise_level_dbov, window_levels
+from rtpaudit.audio.payload import Idle, Repetition, idle_of, repetition_of
+from rtpaudit.audio.progress import ProgressTone, progress_tones
+from rtpaudit.audio.robbed_bits import RobbedBits, robbed_bits_of
+from rtpaudit.audio.scan import EXTREMES, LINEAR_EXTREMES, Scan, scan
+from rtpaudit.audio.silence import Passage, dead_air
+from rtpaudit.audio.slips import Slips, slips_of
+from rtpaudit.audio.spectrum import Band, Hum, band_of, hum_of, spectra_of
+from rtpaudit.audio.splices import Splices, splices_of
+from rtpaudit.audio.tones import SteadyTone, steady_tones, tone_bursts
+from rtpaudit.capture.frames import Octets
+from rtpaudit.media.streams import Stream
+
+Samples = NDArray[np.int16]
+G711 = ("PCMU", "PCMA")
+
+
+@dataclass(slots=True)
+class StreamSound:
+    """What the sound of one stream is like; times are seconds of its timeline."""
+
+    rate_hz: int
+    origin_ns: int
+    """capture time of its first sample"""
+    scanned: Scan
+    level: SpeechLevel
+    noise_dbov: float
+    windows: WindowLevels
+    clipping: Clipping
+    dead_air: list[Passage]
+    hum: Hum | None
+    band: Band
+    digits: list[Digit]
+    tones: list[ProgressTone]
+    steady_tones: list[SteadyTone]
+    law: LawVerdict | None
+    """of G.711 alone"""
+    slips: Slips | None
+    splices: Splices | None
+    payload: "PayloadSigns" = field(default_factory=lambda: PayloadSigns())
+
+
+@dataclass(frozen=True, slots=True)
+class PayloadSigns:
+    """What the payload octets of a stream show, whether or not they can be decoded."""
+
+    cipher: CipherVerdict | None = None
+    repetition: Repetition | None = None
+    idle: Idle | None = None
+    robbed_bits: RobbedBits | None = None
+
+    @property
+    def encrypted(self) -> bool:
+        """Whether the payload has no structure at all."""
+        return self.cipher is not None and self.cipher.cipher is Cipher.ENCRYPTED
+
+
+def payload_signs(stream: Stream, buffers: Sequence[Octets]) -> PayloadSigns:
+    """Signs in the octets of a stream's main payload type, of the buffer that holds most of it."""
+    packets = stream.packets
+    rows = np.flatnonzero((packets.payload_type == stream.payload_type) & is_audio(stream) & ~packets.duplicate)
+    if not len(rows):
+        return PayloadSigns()
+    buffer = int(np.bincount(packets.buffer[rows]).argmax())
+    rows = rows[packets.buffer[rows] == buffer]
+    octets, start, length = buffers[buffer], packets.start[rows], packets.captured[rows]
+    cipher = cipher_of(octets, start, length, stream.encoding)
+    if cipher.cipher is Cipher.ENCRYPTED or stream.encrypted:
+        return PayloadSigns(cipher)
+    return PayloadSigns(
+        cipher,
+        repetition_of(octets, start, length, stream.encoding),
+        idle_of(octets, start, length, stream.encoding),
+        robbed_bits_of(octets, start, length, packets.media_ticks[rows], stream.encoding),
+    )
+
+
+def received_mask(
+    stream: Stream, rows: NDArray[np.int64], position: NDArray[np.int64], rate_hz: int, total: int
+) -> NDArray[np.bool_] | None:
+    """Which samples of a timeline packets brought; None where all of them."""
+    sizes = packet_ticks(stream)[rows] * rate_hz // stream.clock_rate_hz
+    if int(sizes.sum()) == total and len(np.unique(position)) == len(position):
+        return None
+    edges = np.zeros(total + 1, np.int32)
+    np.add.at(edges, np.clip(position, 0, total), 1)
+    np.add.at(edges, np.clip(position + sizes, 0, total), -1)
+    return np.asarray(np.cumsum(edges[:-1]) > 0)
+
+
+def hear(
+    stream: Stream, samples: Samples, received: NDArray[np.bool_] | None, rate_hz: int, origin_ns: int
+) -> StreamSound:
+    """Measure the sound of one stream.
+
+    Parameters
+    ----------
+    stream : Stream
+    samples : int16 array, shape (n,)
+        What its payloads say, on its timeline.
+    received : bool array, shape (n,), optional
+        False where no packet brought the sample.
+    rate_hz : int
+        [Hz]
+    origin_ns : int
+        Capture time of the first sample. [ns]
+    """
+    scanned = scan(samples, rate_hz, received, stream.encoding)
+    level = level_of(scanned)
+    spectra, bursts = spectra_of(samples, scanned), tone_bursts(samples, scanned)
+    low, high = EXTREMES.get(stream.encoding, LINEAR_EXTREMES)
+    packet = round(stream.packet_time_ms * rate_hz / 1000.0) if stream.packet_time_ms > 0 else 0
+    return StreamSound(
+        rate_hz=rate_hz,
+        origin_ns=origin_ns,
+        scanned=scanned,
+        level=level,
+        noise_dbov=noise_level_dbov(scanned, level),
+        windows=window_levels(scanned, level),
+        clipping=clipping_of(samples, scanned, low, high),
+        dead_air=dead_air(scanned),
+        hum=hum_of(spectra),
+        band=band_of(spectra),
+        digits=digits_of(samples, scanned),
+        tones=progress_tones(bursts),
+        steady_tones=steady_tones(samples, scanned, bursts, stream.encoding),
+        law=law_of(samples, rate_hz) if stream.encoding in G711 else None,
+        slips=slips_of(samples, rate_hz, received, packet),
+        splices=splices_of(samples, rate_hz, packet, received) if packet else None,
+    )
