@@ -16,7 +16,7 @@ from rtpaudit.assess.results import Assessment, RecordingFacts
 from rtpaudit.assess.sound import SoundSource
 from rtpaudit.capture import open_recordings
 from rtpaudit.capture.frames import Damage, Octets
-from rtpaudit.decode import Decoder
+from rtpaudit.decode import Decoder, Flows
 from rtpaudit.decode.icmp import MOST_ERRORS, IcmpError, quoted
 from rtpaudit.errors import UnusableArguments
 from rtpaudit.media.agreed import Agreed
@@ -29,8 +29,10 @@ from rtpaudit.media.rtp import RtpCollector
 from rtpaudit.media.selection import Selection, chosen
 from rtpaudit.media.streams import Stream
 from rtpaudit.profile import Profile
+from rtpaudit.signalling.calls import SignallingMessage
 from rtpaudit.signalling.collector import Signalling, SignallingCollector
 from rtpaudit.signalling.payload_types import Encoding
+from rtpaudit.signalling.quality_reports import QualityReport
 from rtpaudit.signalling.reports import RtcpCollector
 
 if TYPE_CHECKING:
@@ -47,6 +49,8 @@ Progress = Callable[[int, int], None]
 class Heard:
     """What one recording brought."""
 
+    recording: "Recording"
+    flows: Flows
     streams: list[Stream]
     calls: list[Call]
     signalling: Signalling
@@ -55,14 +59,33 @@ class Heard:
     buffers: list[Octets]
     damage: list[Damage]
 
+    @property
+    def messages(self) -> list[SignallingMessage]:
+        """What was said, by time."""
+        return self.signalling.messages
+
+    @property
+    def quality_reports(self) -> list[QualityReport]:
+        """Reports in SIP bodies."""
+        return self.signalling.reports
+
 
 class Audit:
     """All that is known of one or several captures, as tables and as sound."""
 
-    def __init__(self, assessment: Assessment, sound: SoundSource, profile: Profile) -> None:
+    def __init__(
+        self,
+        assessment: Assessment,
+        sound: SoundSource,
+        profile: Profile,
+        legs: Sequence[Call] = (),
+        heard: Sequence[Heard] = (),
+    ) -> None:
         self.assessment = assessment
         self.profile = profile
         self.sound: AudioSource = sound
+        self._legs = legs
+        self._heard = heard
 
     @cached_property
     def tables(self) -> Mapping[str, "DataFrame"]:
@@ -99,6 +122,16 @@ class Audit:
         from rtpaudit.report.folder import write_folder
 
         write_folder(self, Path(folder), audio=audio, private=private)
+
+    def excerpt(self, path: str | Path) -> list[Path]:
+        """Write the packets of these calls, all legs of each conversation, as pcapng; the files that were written.
+
+        Calls of several recordings make a file each. UnusableOutput where one cannot be written, or is not ours to
+        replace.
+        """
+        from rtpaudit.report.excerpt import write_excerpt
+
+        return write_excerpt(Path(path), self._legs, self._heard)
 
 
 def audit(
@@ -159,9 +192,11 @@ def audit(
     calls = [call for one in heard for call in one.calls]
     messages = [message for one in heard for message in one.signalling.messages]
     name_all(streams, calls)
-    calls_in_all = len(calls)
+    calls_in_all, legs = len(calls), calls
     if select:
         calls = chosen(calls, select)
+        meant = {call.conversation for call in calls}
+        legs = [call for call in legs if call.conversation in meant]
         streams = streams_of(calls, streams)
         messages = [message for call in calls if call.signalled for message in call.signalled.messages]
     if near is not None:
@@ -182,7 +217,8 @@ def audit(
         sound=sound,
     )
     assessment.calls_in_all = calls_in_all
-    return Audit(assessment, SoundSource(buffers, assessment.streams, settings.conceals_loss), settings)
+    source = SoundSource(buffers, assessment.streams, settings.conceals_loss)
+    return Audit(assessment, source, settings, legs, heard)
 
 
 def _from(progress: Progress | None, done: int, total: int) -> Callable[[int], None]:
@@ -242,6 +278,8 @@ def _listen_to(
         skipped=dict(decoder.skipped),
     )
     return Heard(
+        recording=recording,
+        flows=decoder.flows,
         streams=streams,
         calls=join(streams, said.calls, agreed, recording.name),
         signalling=said,

@@ -16,7 +16,7 @@ from tests.report import made
 COMMANDS = {"triage", "demo", "explain"}
 TRIAGE_OPTIONS = {
     "--out", "--payload-type", "--delay", "--profile", "--zone", "--private", "--digits", "--quiet", "--json",
-    "--fail-below", "--party", "--at", "--call", "--near",
+    "--fail-below", "--party", "--at", "--call", "--near", "--excerpt",
 }  # fmt: skip
 
 COLUMNS = {

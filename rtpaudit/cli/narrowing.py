@@ -2,6 +2,7 @@
 
 from collections.abc import Sequence
 from datetime import UTC, datetime, timedelta, tzinfo
+from pathlib import Path
 from typing import TYPE_CHECKING, Annotated
 
 import typer
@@ -23,6 +24,11 @@ At = Annotated[
 Calls = Annotated[
     list[str] | None,
     typer.Option("--call", metavar="ID", help="Only the call c07, or the one of a Call-ID; may be given again."),
+]
+
+Excerpt = Annotated[
+    Path | None,
+    typer.Option("--excerpt", metavar="FILE", help="Write the packets of these calls as pcapng, to pass on."),
 ]
 
 _EPOCH = datetime(1970, 1, 1, tzinfo=UTC)

@@ -81,10 +81,12 @@ def fail_below(limit: float | None) -> float | None:
     return limit
 
 
-def refuse_digits(private: bool, digits: bool) -> None:
-    """Digits are never shown where a report is private."""
+def refuse_shown(private: bool, digits: bool, excerpt: Path | None) -> None:
+    """Where a report is private, no digits are shown and no packets passed on."""
     if private and digits:
         raise UnusableArguments("--private shows no digits; leave out --digits")
+    if private and excerpt is not None:
+        raise UnusableArguments("--private passes on no packets, which hold names and voices; leave out --excerpt")
 
 
 def profile(path: Path | None) -> "Profile":

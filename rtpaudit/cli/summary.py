@@ -5,6 +5,7 @@ from __future__ import annotations
 import json
 from collections.abc import Mapping, Sequence
 from datetime import datetime, tzinfo
+from pathlib import Path
 from textwrap import fill
 from typing import TYPE_CHECKING, Any
 
@@ -28,19 +29,30 @@ MIND = (
 )
 
 
-def as_text(written: Written, assessment: Assessment, zone: tzinfo | None, columns: int) -> str:
+def as_text(
+    written: Written, assessment: Assessment, passed_on: Sequence[Path], zone: tzinfo | None, columns: int
+) -> str:
     """The summary for people, at most ``columns`` wide where words allow."""
     calls = worst_first(written.tables["calls"])
     streams = written.tables["streams"].set_index("stream")
     sides = {one.id: (one.from_callee, one.from_caller) for one in assessment.calls}
     blocks = [_call(call, sides[call.call], streams, zone, columns) for _, call in calls[:LISTED_CALLS].iterrows()]
-    notes = [*_rest(calls[LISTED_CALLS:]), *_notes(written, streams), *_meaning(calls), _place(written), MIND]
+    notes = [
+        *_rest(calls[LISTED_CALLS:]),
+        *_notes(written, streams),
+        *_meaning(calls),
+        _place(written),
+        *_excerpt(passed_on),
+        MIND,
+    ]
     heading = _heading(written, assessment.calls_in_all, zone)
     opening, closing = ("\n".join(fill(one, columns) for one in part) for part in (heading, notes))
     return "\n\n".join([opening, *blocks, closing])
 
 
-def as_json(written: Written, calls_in_all: int, limit: float | None, broken: Mapping[str, float]) -> str:
+def as_json(
+    written: Written, calls_in_all: int, passed_on: Sequence[Path], limit: float | None, broken: Mapping[str, float]
+) -> str:
     """The summary for programs: one object, calls with the worst first."""
     tables = written.tables
     head = {
@@ -48,6 +60,7 @@ def as_json(written: Written, calls_in_all: int, limit: float | None, broken: Ma
         "schema_version": SCHEMA_VERSION,
         "rtpaudit": __version__,
         "folder": str(written.folder),
+        "excerpt": [str(path) for path in passed_on],
         "captures": written.captures,
         "calls_in_all": calls_in_all,
         "streams": len(tables["streams"]),
@@ -163,6 +176,12 @@ def _notes(written: Written, streams: DataFrame) -> list[str]:
 def _place(written: Written) -> str:
     sound = f", {_many(written.audio_files, 'WAV file')} in audio" if written.audio_files else ""
     return f"Report in {visible(str(written.folder))}: tables as CSV and Parquet, audit.json{sound}."
+
+
+def _excerpt(passed_on: Sequence[Path]) -> list[str]:
+    if not passed_on:
+        return []
+    return [f"Excerpt in {visible(', '.join(map(str, passed_on)))}: names, voices and digits are in it, as captured."]
 
 
 def _local(time: Timestamp, zone: tzinfo | None) -> datetime:

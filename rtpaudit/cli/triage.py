@@ -30,6 +30,7 @@ def triage(
     at: narrowing.At = None,
     call: narrowing.Calls = None,
     near: options.Near = None,
+    excerpt: narrowing.Excerpt = None,
     private: options.Private = False,
     digits: options.Digits = False,
     quiet: options.Quiet = False,
@@ -40,26 +41,31 @@ def triage(
     from rtpaudit.report.folder import refuse_foreign
 
     limit, where = options.fail_below(fail_below), options.zone(zone)
-    options.refuse_digits(private, digits)
+    options.refuse_shown(private, digits, excerpt)
     wanted = narrowing.selection(party, at, call, where)
     given, chosen, known_delay = options.payload_types(payload_type), options.profile(profile), options.delay_ms(delay)
     folder = out or options.folder_for(captures)
     # Now, and not after a long walk.
     refuse_foreign(folder)
+    if excerpt is not None:
+        from rtpaudit.report.excerpt import refuse_excerpt
+
+        refuse_excerpt(excerpt, captures)
     with Bar(shown=not quiet and not json) as bar:
         try:
             audit = _audit(captures, chosen, given, known_delay, wanted, near, digits, bar, quiet)
         except NothingChosen as fault:
             raise narrowing.nothing_chosen(fault, where, private) from fault
+        passed_on = [] if excerpt is None else audit.excerpt(excerpt)
         written = _write(audit, folder, private, bar)
     broken = _below(written, limit)
 
     from rtpaudit.cli.summary import as_json, as_text
 
     if json:
-        say(as_json(written, audit.assessment.calls_in_all, limit, broken))
+        say(as_json(written, audit.assessment.calls_in_all, passed_on, limit, broken))
     elif not quiet:
-        say(as_text(written, audit.assessment, where, width()))
+        say(as_text(written, audit.assessment, passed_on, where, width()))
     if broken:
         complain(f"rated below R {limit:g}: {', '.join(f'{call} ({rating:.3g})' for call, rating in broken.items())}")
     return 1 if broken else 0

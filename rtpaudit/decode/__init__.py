@@ -21,10 +21,12 @@ class Decoder:
         Frames that are no packet of UDP, TCP or ICMP, by reason.
     """
 
-    def __init__(self) -> None:
+    def __init__(self, note_fragments: bool = False) -> None:
         from rtpaudit.decode.path import Path  # compiled kernels: numba takes a while to import
 
         self._path = Path()
+        if note_fragments:
+            self._path.fragments.brought = {}
 
     @property
     def flows(self) -> Flows:
@@ -40,6 +42,16 @@ class Decoder:
     def skipped(self) -> dict[str, int]:
         """Frames that carry no UDP, TCP or ICMP packet, by reason."""
         return self._path.skipped()
+
+    def frames_of(self, capture: str, frame: int) -> list[tuple[str, int]]:
+        """Capture and number of all frames that brought what a frame completed; known where fragments are noted."""
+        found, left = {(capture, frame)}, [(capture, frame)]
+        while left:
+            # Fragments of a datagram that itself came in fragments bear the number of its last one.
+            more = set((self._path.fragments.brought or {}).get(left.pop(), ())) - found
+            found |= more
+            left += more
+        return sorted(found)
 
     def decode(self, frames: Frames, capture: str) -> list[Packets]:
         """Packets of a batch of the file ``capture``; datagrams put together from fragments are a batch apart."""

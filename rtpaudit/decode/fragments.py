@@ -26,6 +26,10 @@ Key = tuple[int, bytes, int, int]
 """version, addresses, protocol (0 for IPv6), identification"""
 
 
+Place = tuple[str, int]
+"""capture and number of a frame"""
+
+
 @dataclass(frozen=True, slots=True)
 class Arrival:
     """What is kept of the frame that brought a fragment."""
@@ -77,6 +81,8 @@ class _Open:
     """octets of the payload that the parts cover"""
     held: int = 1024
     spoilt: bool = False
+    frames: list[Place] = field(default_factory=list)
+    """those that brought fragments, where that is asked for"""
 
     def add(self, fragment: Fragment) -> None:
         """Put a fragment in its place, or spoil the datagram."""
@@ -150,6 +156,8 @@ class Fragments:
     lost: int = 0
     """datagrams given up"""
     first_lost: Arrival | None = None
+    brought: dict[Place, list[Place]] | None = None
+    """frames that brought the fragments of a datagram, by the frame that completed it; None where nobody asks"""
 
     def add(self, fragment: Fragment, arrival: Arrival) -> Datagram | None:
         """The datagram that this fragment completes, if it does."""
@@ -160,6 +168,8 @@ class Fragments:
                 self._give_up(next(iter(self.opened)))
             datagram = self.opened[fragment.key] = _Open(arrival)
             self.held += datagram.held
+        if self.brought is not None:
+            datagram.frames.append((arrival.capture, arrival.frame))
         held = datagram.held
         if not datagram.spoilt:
             datagram.add(fragment)
@@ -167,6 +177,8 @@ class Fragments:
         if not datagram.complete():
             return None
         self._close(fragment.key)
+        if self.brought is not None:
+            self.brought.setdefault((arrival.capture, arrival.frame), []).extend(datagram.frames)
         self.done.pop(fragment.key, None)
         self.done[fragment.key] = arrival.time_ns
         if len(self.done) > MAX_OPEN:

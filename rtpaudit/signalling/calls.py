@@ -28,6 +28,8 @@ class SignallingMessage:
     capture: str = ""
     frame: int = 0
     """the one that ends the message"""
+    first_frame: int = 0
+    """the one that begins it, where it came over TCP and that is known"""
     flow: int = -1
     target: str = ""
     """URI or endpoint that a request names; may identify a person"""

@@ -94,6 +94,7 @@ class SignallingCollector:
     def _framed(self, messages: list[FramedMessage], flow: int, transport: str, offset: int) -> None:
         for one in messages:
             row = self._row(flow, one.time_ns, one.frame, "SIP", transport)
+            row.first_frame = one.first_frame
             self._sip(one.octets, row, one.whole, offset)
 
     def _datagram(self, packets: Packets, row: int) -> None:

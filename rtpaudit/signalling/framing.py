@@ -38,6 +38,8 @@ class FramedMessage:
     """the one that brought its last octet"""
     whole: bool = True
     """False where octets of it are missing"""
+    first_frame: int = 0
+    """the one that brought its first octet, 0 where that is not told apart"""
 
 
 @dataclass(slots=True)
@@ -153,11 +155,12 @@ class MessageStream:
     def _take(self, length: int, whole: bool) -> FramedMessage:
         octets = bytes(self._buffer[:length])
         end = self._begin + length
+        _, _, first_frame = next((one for one in self._arrivals if one[0] > self._begin), self._arrivals[-1])
         _, time_ns, frame = next((one for one in self._arrivals if one[0] >= end), self._arrivals[-1])
         self._drop(length)
         self._synchronised = True
         self.found += 1
-        return FramedMessage(octets, time_ns, frame, whole)
+        return FramedMessage(octets, time_ns, frame, whole, first_frame)
 
     def _drop(self, length: int) -> None:
         if length:

@@ -1,5 +1,7 @@
 """Options that narrow down: what reaches the walk, and what is said where nothing fits."""
 
+import json
+from pathlib import Path
 from zoneinfo import ZoneInfo
 
 import pytest
@@ -62,12 +64,32 @@ def test_a_capture_without_calls_has_none_to_choose(run: Run) -> None:
         (("--at", ""), "--at"),
         (("--party", ""), "empty"),
         (("--private", "--digits"), "leave out --digits"),
+        (("--private", "--excerpt", "x.pcapng"), "leave out --excerpt"),
+        (("--excerpt", "missing/x.pcapng"), "no such folder"),
     ],
 )
 def test_unusable_options_are_refused_before_anything_is_read(run: Run, options: tuple[str, ...], said: str) -> None:
     result = run("triage", "a.pcap", *options)
     assert (result.status, result.asked) == (2, [])
     assert said in result.err
+
+
+def test_the_excerpt_is_named_in_both_summaries(run: Run, tmp_path: Path) -> None:
+    class Excerpted(made.Audited):
+        def excerpt(self, path: Path) -> list[Path]:
+            return [path, path.with_name("x-2.pcapng")]
+
+    result = run("triage", "a.pcap", "--excerpt", "x.pcapng", found=Excerpted())
+    assert "Excerpt in x.pcapng, x-2.pcapng: " in result.out
+    result = run("triage", "a.pcap", "--excerpt", "x.pcapng", "--json", found=Excerpted())
+    assert json.loads(result.out)["excerpt"] == ["x.pcapng", "x-2.pcapng"]
+
+
+def test_a_file_that_is_no_excerpt_is_refused_before_anything_is_read(run: Run, tmp_path: Path) -> None:
+    (tmp_path / "a.pcap").write_bytes(b"precious")
+    result = run("triage", "a.pcap", "--excerpt", "a.pcap")
+    assert (result.status, result.asked) == (2, [])
+    assert (tmp_path / "a.pcap").read_bytes() == b"precious"
 
 
 def test_the_summary_says_of_how_many_calls_these_are_some(run: Run) -> None:

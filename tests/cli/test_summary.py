@@ -17,7 +17,7 @@ UTC = ZoneInfo("UTC")
 
 def summary(place: Path, found: Assessment | None = None, zone: tzinfo = UTC, columns: int = 80) -> str:
     audit = made.Audited(found)
-    return as_text(write_folder(audit, place / "out"), audit.assessment, zone, columns)
+    return as_text(write_folder(audit, place / "out"), audit.assessment, [], zone, columns)
 
 
 def calls(*ratings: float) -> Assessment:

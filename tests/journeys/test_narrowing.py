@@ -94,6 +94,18 @@ def test_a_time_that_fits_no_call_is_status_2_and_one_line(command: Command, pla
     assert not (place / "none").exists()
 
 
+def test_an_excerpt_can_be_passed_on_and_read_again(command: Command, place) -> None:
+    result = command(
+        "triage", TWO_LEGS, "--party", "desk-203", "--excerpt", "desk.pcapng", "--out", "first", "--json", "--quiet"
+    )
+    assert result.returncode == 0, result.stderr
+    assert json.loads(result.stdout)["excerpt"] == ["desk.pcapng"]
+    again = command("triage", "desk.pcapng", "--out", "second", "--json")
+    before, after = (json.loads(one.stdout)["calls"] for one in (result, again))
+    assert [call["r_factor"] for call in before] == [call["r_factor"] for call in after]
+    assert [call["call_id"] for call in before] == [call["call_id"] for call in after]
+
+
 def test_digits_are_masked_unless_asked_for(command: Command, place) -> None:
     for name, more in (("masked", ()), ("shown", ("--digits",))):
         assert command("triage", DIGITS, "--quiet", "--out", name, *more).returncode == 0

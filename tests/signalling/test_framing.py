@@ -24,7 +24,7 @@ def test_one_message_over_many_segments_takes_time_and_frame_of_the_last() -> No
     stream = MessageStream()
     pieces = [INVITE[:10], INVITE[10:200], INVITE[200:-1], INVITE[-1:]]
     found = [one for row, piece in enumerate(pieces) for one in stream.feed(piece, 100 + row, 7 + row)]
-    assert found == [FramedMessage(INVITE, 103, 10)]
+    assert found == [FramedMessage(INVITE, 103, 10, first_frame=7)]
 
 
 @settings(max_examples=150)
@@ -62,14 +62,14 @@ def test_a_gap_within_a_body_gives_what_is_there_and_the_next_message() -> None:
     stream = MessageStream()
     cut = len(INVITE) - 40
     found = stream.feed(INVITE[:cut], 0, 1) + stream.feed(OFFER[-10:] + BYE, 5, 2, gap_before=True)
-    assert found == [FramedMessage(INVITE[:cut], 0, 1, whole=False), FramedMessage(BYE, 5, 2)]
+    assert found == [FramedMessage(INVITE[:cut], 0, 1, False, 1), FramedMessage(BYE, 5, 2, True, 2)]
     assert stream.skipped == 10
 
 
 def test_a_gap_within_the_head_gives_what_is_there() -> None:
     stream = MessageStream()
     found = stream.feed(INVITE[:80], 0, 1) + stream.feed(BYE, 5, 2, gap_before=True)
-    assert found == [FramedMessage(INVITE[:80], 0, 1, whole=False), FramedMessage(BYE, 5, 2)]
+    assert found == [FramedMessage(INVITE[:80], 0, 1, False, 1), FramedMessage(BYE, 5, 2, True, 2)]
 
 
 def test_missing_octets_that_nobody_told_of_do_not_swallow_the_next_message() -> None:
