@@ -93,12 +93,17 @@ def received_mask(
 ) -> NDArray[np.bool_] | None:
     """Which samples of a timeline packets brought; None where all of them."""
     sizes = packet_ticks(stream)[rows] * rate_hz // stream.clock_rate_hz
-    if int(sizes.sum()) == total and len(np.unique(position)) == len(position):
+    order = np.argsort(position, kind="stable")
+    begin, reach = position[order], np.maximum.accumulate((position + sizes)[order])
+    holes_from = np.concatenate([[0], reach])
+    holes_to = np.append(begin, total)
+    holes = np.flatnonzero(holes_to > holes_from)
+    if not len(holes):
         return None
-    edges = np.zeros(total + 1, np.int32)
-    np.add.at(edges, np.clip(position, 0, total), 1)
-    np.add.at(edges, np.clip(position + sizes, 0, total), -1)
-    return np.asarray(np.cumsum(edges[:-1]) > 0)
+    mask = np.ones(total, np.bool_)
+    for hole in holes.tolist():
+        mask[max(holes_from[hole], 0) : holes_to[hole]] = False
+    return mask
 
 
 def hear(
