@@ -92,13 +92,14 @@ def _passages(silent: Mask, scanned: Scan, least_s: float) -> list[Passage]:
     joined = starts[1:] - ends[:-1] < CLICK_BLOCKS
     starts, ends = starts[np.concatenate([[True], ~joined])], ends[np.concatenate([~joined, [True]])]
     lasting = (ends - starts) >= least_s * BLOCKS_PER_S
-    return [_passage(scanned, int(start), int(end)) for start, end in zip(starts[lasting], ends[lasting], strict=True)]
+    places, power = zip(starts[lasting].tolist(), ends[lasting].tolist(), strict=True), scanned.power()
+    return [_passage(scanned, power, start, end) for start, end in places]
 
 
-def _passage(scanned: Scan, start: int, end: int) -> Passage:
+def _passage(scanned: Scan, power_of_blocks: NDArray[np.float64], start: int, end: int) -> Passage:
     seconds = scanned.block_samples / scanned.sampling_rate_hz
     received = scanned.received[start:end]
-    power = np.nansum(scanned.power()[start:end] * received)
+    power = np.nansum(power_of_blocks[start:end] * received)
     total = int(received.sum())
     last = min(end * scanned.block_samples, scanned.samples)
     return Passage(
