@@ -68,8 +68,7 @@ def judged_frames(samples: Samples, received: Mask | None = None) -> Judged:
         starts = starts[np.linspace(0, len(starts) - 1, 4 * FRAMES).astype(np.int64)]
     spread = np.arange(CONTEXT) - (CONTEXT - FRAME) // 2
     if received is not None:
-        missing = np.concatenate([[0], np.cumsum(~received)])
-        starts = starts[missing[starts + spread[-1] + 1] == missing[starts + spread[0]]]
+        starts = starts[received[starts[:, None] + spread].all(axis=1)]
     power = np.var(samples[starts[:, None] + np.arange(FRAME)].astype(np.float32), axis=1)
     starts = starts[power > FULL_SCALE**2 * 10.0 ** (LEAST_DBOV / 10.0)]
     if len(starts) > FRAMES:
