@@ -1,5 +1,8 @@
 """What ``--private`` leaves out: parties, addresses, dialogs and file names become pseudonyms, digits go.
 
+Text that came from outside and is no name, such as a reason phrase or the name of an encoding, is kept only where it is
+a word that standards define. Within sentences of ours it stands in quotes, and they are emptied.
+
 Pseudonyms are keyed: within one run the same party has the same one in all tables, and without the key, which is kept
 nowhere, neither a list of all telephone numbers nor another run's report leads back to it.
 """
@@ -15,19 +18,32 @@ from collections.abc import Callable, Mapping, Sequence
 from ipaddress import ip_address
 from typing import TYPE_CHECKING
 
+from rtpaudit.signalling.grammar import METHODS
+from rtpaudit.signalling.h248 import COMMANDS
+from rtpaudit.signalling.mgcp import VERBS
+from rtpaudit.signalling.payload_types import REGISTERED
+
 if TYPE_CHECKING:
     from pandas import DataFrame, Series
 
 # Text columns that may tell who spoke with whom; all others hold only words of ours. "words" are sentences that may
-# name one of the others, and what is "dropped" cannot be made harmless.
+# name one of the others, "standard" are words of standards unless somebody made up others, and what is "dropped" cannot
+# be made harmless.
 TREATMENT: dict[str, dict[str, str]] = {
-    "calls": {"capture": "file", "call_id": "dialog", "caller": "party", "callee": "party"},
-    "streams": {"capture": "file", "source": "party", "destination": "party"},
+    "calls": {"capture": "file", "call_id": "dialog", "caller": "party", "callee": "party", "encoding": "standard"},
+    "streams": {
+        "capture": "file",
+        "source": "party",
+        "destination": "party",
+        "encoding": "standard",
+        "rating_note": "words",
+    },
     "findings": {"says": "words", "check_next": "words"},
     "signalling": {
         "from": "words",
         "to": "words",
-        "message": "words",
+        "message": "standard",
+        "cseq": "standard",
         "line": "dropped",
         "call_id": "dialog",
         "capture": "file",
@@ -42,8 +58,16 @@ _ADDRESS = re.compile(
     r"(?<![\w.])\d{1,3}(?:\.\d{1,3}){3}(?!\w|\.\d)|(?<![\w:])[0-9A-Fa-f]*(?::[0-9A-Fa-f.]*){2,}[0-9A-Fa-f]"
 )
 _WORD = re.compile(r"[\w+][\w+.@-]*\w")
+# What Python puts around text of others; the end may be cut off. An apostrophe behind a letter opens nothing.
+_QUOTED = re.compile(r"""(?<!\w)(?:'(?:[^'\\]|\\.)*(?:'|\\?$)|"(?:[^"\\]|\\.)*(?:"|\\?$))""")
+_STATUS = re.compile(r"[1-6]\d\d(?= |$)", re.ASCII)
+_STANDARD_WORDS = METHODS | VERBS | REGISTERED | {"unknown", "Transaction", "Reply", *map(str.capitalize, COMMANDS)}
 # A short number within a sentence is rather a figure than an extension.
 _SHORTEST_NUMBER = 6
+
+
+OTHER = "other"
+"""in place of a word that no standard defines"""
 
 
 def new_key() -> bytes:
@@ -64,10 +88,16 @@ class Pseudonyms:
 
     def tables(self, tables: Mapping[str, DataFrame]) -> dict[str, DataFrame]:
         """The tables with nothing in them that tells who spoke."""
-        treated = {"file": self.file, "dialog": self.dialog, "party": self.party, "words": self.words}
+        treated = {
+            "file": self.file,
+            "dialog": self.dialog,
+            "party": self.party,
+            "standard": self.standard,
+            "words": self.words,
+        }
         hidden = {name: frame.copy(deep=False) for name, frame in tables.items()}
         # Sentences last: what they may name has to be known by then.
-        for kind in ("file", "dialog", "party", "words"):
+        for kind in treated:
             for table, columns in TREATMENT.items():
                 for column in [name for name, treatment in columns.items() if treatment == kind]:
                     hidden[table][column] = _replaced(hidden[table][column], treated[kind])
@@ -94,8 +124,21 @@ class Pseudonyms:
             self._learn(name, self._files[name])
         return self._files[name]
 
+    def standard(self, text: str) -> str:
+        """Words of standards, a status code without its phrase, and numbers; ``other`` in place of any other word."""
+        if status := _STATUS.match(text):
+            return status[0]
+        return "".join(map(self._standard_word, re.split(r"([ /])", text)))
+
+    def _standard_word(self, word: str) -> str:
+        if word in _STANDARD_WORDS or word in ("", " ", "/") or (word.isascii() and word.isdigit()):
+            return word
+        self._known.setdefault(word, OTHER)
+        return self._known[word]
+
     def words(self, text: str) -> str:
-        """A sentence in which addresses, and names met before, are replaced."""
+        """A sentence in which addresses, and names met before, are replaced, and quotations emptied."""
+        text = _QUOTED.sub("'…'", text)
         for name in self._odd:
             text = text.replace(name, self._known[name])
         return _ADDRESS.sub(lambda found: self._address(found[0]), _WORD.sub(lambda found: self._word(found[0]), text))

@@ -13,6 +13,7 @@ from rtpaudit.signalling.connections import Connection, may_carry_sip
 from rtpaudit.signalling.dialogs import calls_of
 from rtpaudit.signalling.framing import FramedMessage
 from rtpaudit.signalling.gateway_control import GatewayControl
+from rtpaudit.signalling.grammar import METHODS
 from rtpaudit.signalling.h248 import looks_like_h248, parse_h248
 from rtpaudit.signalling.mgcp import looks_like_mgcp, parse_mgcp
 from rtpaudit.signalling.quality_reports import QualityReport
@@ -122,9 +123,8 @@ class SignallingCollector:
         if sighting is not None:
             self._sightings.append(sighting)
         if faults:
-            self._note(
-                offset, f"SIP {row.message[:40]} from {row.source}: {'; '.join(faults)[:300]}", "nothing else of it"
-            )
+            what = f"{_kind(row)} from {row.source}: {'; '.join(faults)[:300]}"
+            self._note(offset, what, "nothing else of it")
 
     def _mgcp(self, octets: bytes, row: SignallingMessage, offset: int) -> None:
         try:
@@ -140,7 +140,7 @@ class SignallingCollector:
             self._control.mgcp(message, made)
             self._messages.append(made)
             if message.fault:
-                self._note(offset, f"MGCP {made.message} from {row.source}: {message.fault}", "the description in it")
+                self._note(offset, f"{_kind(made)} from {row.source}: {message.fault}", "the description in it")
 
     def _h248(self, octets: bytes, row: SignallingMessage, offset: int) -> None:
         try:
@@ -176,6 +176,13 @@ class SignallingCollector:
         self._damaged += 1
         if self._damaged <= MAX_DAMAGE:
             self._damage.append(Damage(self._capture, offset, what, lost))
+
+
+def _kind(row: SignallingMessage) -> str:
+    """What a message is, without a word of its own: damage is told where nobody is to be named, too."""
+    if row.status_code is not None:
+        return f"{row.protocol} {row.status_code}"
+    return f"{row.protocol} {row.message}" if row.message in METHODS else f"{row.protocol} request"
 
 
 def _place(address: str, port: int) -> str:

@@ -41,7 +41,7 @@ _LONG_NAMES = {
     "r": "remote",
     "mo": "mode",
 }
-_COMMANDS = ("add", "move", "modify", "subtract", "notify", "auditvalue", "servicechange")
+COMMANDS = ("add", "move", "modify", "subtract", "notify", "auditvalue", "servicechange")
 _MODES = {
     "so": "sendonly",
     "rc": "recvonly",
@@ -163,7 +163,7 @@ class _Walk:
         current = found[-1]
         if name == "context":
             current.context = current.context or value
-        elif name in _COMMANDS and self._inside("context") and len(current.commands) < 64:
+        elif name in COMMANDS and self._inside("context") and len(current.commands) < 64:
             current.commands.append(f"{name.capitalize()} {value}".rstrip())
             if name == "subtract" and current.reply:
                 current.subtracted.append(value)
@@ -192,4 +192,4 @@ class _Walk:
         return next((value for one, value in reversed(self.stack) if one == name), "")
 
     def _termination(self) -> str:
-        return next((value for one, value in reversed(self.stack) if one in _COMMANDS), "")
+        return next((value for one, value in reversed(self.stack) if one in COMMANDS), "")

@@ -91,6 +91,8 @@ _KNOWN = {
     "VP9": (90000, -1, 1, "video"),
     "AV1": (90000, -1, 1, "video"),
 }
+REGISTERED = frozenset(_KNOWN)
+"""names that are the same wherever they are met; any other may be one of somebody's own making"""
 _BY_FOLDED_NAME = {name.casefold(): name for name in _KNOWN}
 
 # RFC 3551 section 5.1: an encoding name is a token of SDP.

@@ -214,7 +214,7 @@ def _metrics(lines: dict[str, str]) -> QualityMetrics:
         if lowest <= number <= highest:
             numbers[field] = number
         else:
-            set_aside.append(f"{key.partition(' ')[2].upper()}={value[:20]}")
+            set_aside.append(f"{key.partition(' ')[2].upper()}={value[:20]!r}")
     times, quality = _pairs(lines.get("timestamps", "")), _pairs(lines.get("qualityest", ""))
     return QualityMetrics(
         started_ns=_time_ns(times.get("start", "")),

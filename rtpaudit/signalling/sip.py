@@ -113,7 +113,7 @@ def parse_message(octets: bytes, whole: bool = True) -> SipMessage:
     number, cseq_method = _cseq(headers, faults, method)
     call_id = _only(headers, "call-id", faults)
     if not call_id:
-        raise MalformedPacket(f"{method or status} without Call-ID")
+        raise MalformedPacket(f"{_known(method) or status} without Call-ID")
     for name in ("from", "to"):
         if not _only(headers, name, faults):
             faults.append(f"no {name.capitalize()} header field")
@@ -178,13 +178,18 @@ def _only(headers: dict[str, list[str]], name: str, faults: list[str]) -> str:
 def _cseq(headers: dict[str, list[str]], faults: list[str], method: str) -> tuple[int, str]:
     found = _CSEQ.match(_only(headers, "cseq", faults))
     if found is None or int(found[1]) >= MAX_CSEQ:
-        raise MalformedPacket(f"{method or 'response'} without a CSeq of a number below 2^32 and a method")
+        raise MalformedPacket(f"{_known(method) or 'response'} without a CSeq of a number below 2^32 and a method")
     upper = found[2].upper()
     named = upper if upper in METHODS else found[2]
     if method and named != method:
-        faults.append(f"CSeq of {named} in {method}")
+        faults.append(f"CSeq of {_known(named)} in {_known(method)}")
         named = method
     return int(found[1]), named
+
+
+def _known(method: str) -> str:
+    """A method as it may stand in a sentence of ours: whatever comes from outside stands in quotes there."""
+    return method if not method or method in METHODS else "an unknown method"
 
 
 def _body(headers: dict[str, list[str]], rest: bytes, faults: list[str], whole: bool) -> bytes:

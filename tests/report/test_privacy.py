@@ -13,15 +13,14 @@ from tests.report import made
 KEY = bytes(range(32))
 # Text columns that hold only words of ours.
 HARMLESS = {
-    "calls": {"call", "conversation", "outcome", "release_by", "encoding", "quality_band", "headline"},
+    "calls": {"call", "conversation", "outcome", "release_by", "quality_band", "headline"},
     "streams": {
-        "stream", "call", "ssrc", "encoding", "clock_basis", "match_basis", "delay_basis", "rating_note",
-        "quality_band",
+        "stream", "call", "ssrc", "clock_basis", "match_basis", "delay_basis", "quality_band",
     },
     "gaps": {"stream"},
     "windows": {"stream"},
     "findings": {"finding", "call", "stream", "severity", "where", "unit", "basis"},
-    "signalling": {"call", "protocol", "transport", "cseq"},
+    "signalling": {"call", "protocol", "transport"},
     "events": {"call", "stream", "event", "carried_as"},
     "reports": {"call", "stream", "report", "reporter_ssrc"},
     "damage": set(),
@@ -77,6 +76,50 @@ def test_digits_and_the_lines_of_messages_go() -> None:
     tables = hidden()
     assert tables["events"].digit.isna().all()
     assert tables["signalling"].line.isna().all()
+
+
+@pytest.mark.parametrize(
+    ("text", "kept"),
+    [
+        ("486 Ann is busy", "486"),
+        ("200", "200"),
+        ("INVITE", "INVITE"),
+        ("ANN", "other"),
+        ("2 INVITE", "2 INVITE"),
+        ("2 ANN", "2 other"),
+        ("CRCX", "CRCX"),
+        ("Transaction Add brine/1", "Transaction Add other/1"),
+        ("PCMU/G722", "PCMU/G722"),
+        ("PCMU/AnnsCodec", "PCMU/other"),
+        ("unknown", "unknown"),
+    ],
+)
+def test_of_words_from_outside_those_of_standards_are_kept(text: str, kept: str) -> None:
+    assert Pseudonyms(KEY, []).standard(text) == kept
+
+
+def test_a_made_up_encoding_is_not_named_in_a_sentence_either() -> None:
+    names = Pseudonyms(KEY, [])
+    names.standard("AnnsCodec")
+    assert names.words("G.113 Appendix I has no values for AnnsCodec") == "G.113 Appendix I has no values for other"
+
+
+@pytest.mark.parametrize(
+    "sentence",
+    [
+        f"a start line {'Ann'!r} of 3", "the sender's line " + repr("Ann's") + " ends", "it begins " + repr("Ann'\""),
+        "its end is cut 'Ann", "it says 'Ann\\", "'Ann' first",
+    ],
+)  # fmt: skip
+def test_what_a_sentence_quotes_is_emptied(sentence: str) -> None:
+    said = Pseudonyms(KEY, []).words(sentence)
+    assert "Ann" not in said
+    assert "…" in said
+
+
+def test_an_apostrophe_is_no_quotation() -> None:
+    sentence = "cut short by the capture's snap length, not the senders' fault"
+    assert Pseudonyms(KEY, []).words(sentence) == sentence
 
 
 def test_the_same_party_keeps_one_pseudonym_in_all_tables() -> None:

@@ -84,7 +84,7 @@ def test_values_outside_their_range_are_set_aside_and_named() -> None:
     assert math.isnan(local.loss_pct)
     assert math.isnan(local.round_trip_ms)
     assert local.discard_pct == 2.0
-    assert local.set_aside == ("NLR=104.2", "RTD=70000")
+    assert local.set_aside == ("NLR='104.2'", "RTD='70000'")
 
 
 def test_a_report_without_remote_metrics_has_none() -> None:
