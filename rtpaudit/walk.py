@@ -269,6 +269,7 @@ def _listen_to(
         capture=recording.name,
         given=given,
         offered=agreed.offered(decoder.flows),
+        dialog_of=agreed.dialog_of(decoder.flows),
     )
     reports = control.finish()
     facts = RecordingFacts(

@@ -72,6 +72,26 @@ class Agreed:
             return None
         return _once_per_flow(self, flows)
 
+    def dialog_of(self, flows: Flows) -> Callable[[int, int], SipCall | None] | None:
+        """Which dialog media of a flow belongs to at a time; None where nothing at all was agreed."""
+        if not self._at:
+            return None
+
+        def dialog_of(flow: int, time_ns: int) -> SipCall | None:
+            return next((found.call for found in self.at_ends(flows, flow, time_ns) if found.call is not None), None)
+
+        return dialog_of
+
+    def at_ends(self, flows: Flows, flow: int, time_ns: int) -> Iterable[Agreement]:
+        """The agreement of whom a flow goes to, then of who sends it: a relay or a translator may have moved it."""
+        for place in (
+            (flows.destination_text(flow), int(flows.destination_port[flow])),
+            (flows.source_text(flow), int(flows.source_port[flow])),
+        ):
+            found = self.at(place, time_ns, time_ns + 1)
+            if found is not None:
+                yield found
+
     def addresses(self) -> Iterable[Place]:
         """Every place at which somebody wanted to receive."""
         return self._at.keys()
@@ -79,12 +99,7 @@ class Agreed:
 
 def _once_per_flow(agreed: Agreed, flows: Flows) -> Callable[[int, int, int], Encoding | None]:
     def offered(flow: int, payload_type: int, time_ns: int) -> Encoding | None:
-        place = flows.destination_text(flow), int(flows.destination_port[flow])
-        found = agreed.at(place, time_ns, time_ns + 1)
-        if found is None:
-            # Moved by a relay or an address translator: what the sender itself announced is the next best.
-            back = flows.source_text(flow), int(flows.source_port[flow])
-            found = agreed.at(back, time_ns, time_ns + 1)
-        return found.term.encodings.get(payload_type) if found is not None else None
+        told = (found.term.encodings.get(payload_type) for found in agreed.at_ends(flows, flow, time_ns))
+        return next((one for one in told if one is not None), None)
 
     return offered

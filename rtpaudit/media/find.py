@@ -1,6 +1,6 @@
 """From grouped RTP rows to streams: recognised, named, numbered, split where a source came back after long silence."""
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from itertools import pairwise
 
 import numpy as np
@@ -13,7 +13,11 @@ from rtpaudit.media.numbering import Numbering, number
 from rtpaudit.media.recognise import is_rtp, survey
 from rtpaudit.media.rtp import Groups, RtpCollector, merge_interfaces, selected
 from rtpaudit.media.streams import Content, Stream, StreamPackets
+from rtpaudit.signalling.calls import SipCall
 from rtpaudit.signalling.payload_types import Encoding
+
+DialogOf = Callable[[int, int], SipCall | None]
+"""(flow, arrival in ns) to the dialog that media of that flow belonged to then, None where no party named its ends"""
 
 SAMPLE_OCTETS = {"PCMU": 1.0, "PCMA": 1.0, "G722": 1.0, "L8": 1.0, "L16": 2.0, "G726-32": 0.5}
 """Octets for each tick of the RTP clock and channel, of encodings whose payload length tells the packet time."""
@@ -31,10 +35,12 @@ def find_streams(
     capture: str = "",
     given: Mapping[int, Encoding] | None = None,
     offered: Offered | None = None,
+    dialog_of: DialogOf | None = None,
 ) -> list[Stream]:
     """The streams of one recording, by first packet.
 
-    ``buffers`` are the octets that rows point into, ``capture`` the name of the recording.
+    ``buffers`` are the octets that rows point into, ``capture`` the name of the recording. A restart under a new
+    dialog is a new stream.
     """
     groups = collector.finish()
     merge_interfaces(groups)
@@ -47,7 +53,10 @@ def find_streams(
     numbering = number(groups, rates, np.array([one.step_ticks for one in meanings], np.int64))
     streams = []
     for group, span in enumerate(_spans(groups)):
-        for packets in _parts(groups, numbering, slice(*span), meanings[group]):
+        rows = slice(*span)
+        if dialog_of is not None:
+            _part_by_dialog(groups, numbering, rows, int(groups.flow[group]), dialog_of)
+        for packets in _parts(groups, numbering, rows, meanings[group]):
             streams.append(_stream(packets, groups, group, meanings[group], flows, recording, capture))
     return sorted(streams, key=lambda one: (int(one.packets.time_ns[0]), int(one.packets.frame[0])))
 
@@ -55,6 +64,25 @@ def find_streams(
 def _spans(groups: Groups) -> list[tuple[int, int]]:
     edges = groups.bounds.tolist()
     return list(pairwise(edges))
+
+
+def _part_by_dialog(groups: Groups, numbering: Numbering, span: slice, flow: int, dialog_of: DialogOf) -> None:
+    """Begin a new stream of a group at each segment that began under another dialog than the ones before it."""
+    segment = numbering.segment[span]
+    if segment.max() <= 0:
+        return
+    first = np.unique(segment[segment >= 0], return_index=True)[1]
+    began = groups.rows.time_ns[span][segment >= 0][first].tolist()
+    later = np.zeros(len(began), np.int32)
+    before: SipCall | None = None
+    for k, time_ns in enumerate(began):
+        now = dialog_of(flow, time_ns)
+        later[k] = later[max(k - 1, 0)]
+        if now is not None:
+            # Legs of one call may share the media: a dialog is new where it began after the media did.
+            later[k] += before is not None and now is not before and now.started_ns > began[k - 1]
+            before = now
+    numbering.stream[span] += later[np.maximum(segment, 0)]
 
 
 def _parts(groups: Groups, numbering: Numbering, span: slice, meaning: Meaning) -> list[StreamPackets]:

@@ -6,7 +6,7 @@ from dataclasses import dataclass, field
 import numpy as np
 
 from rtpaudit.decode.packets import Flows, Kind, Packets
-from rtpaudit.media.find import find_streams
+from rtpaudit.media.find import DialogOf, find_streams
 from rtpaudit.media.rtp import RtpCollector
 from rtpaudit.media.streams import Stream
 from rtpaudit.signalling.payload_types import Encoding
@@ -64,11 +64,11 @@ class Datagrams:
                 ports[0][flow] += 2 * flow
         return Flows(source, destination, *ports, np.full(count, 4, np.uint8), np.full(count, 17, np.uint8))
 
-    def streams(self, given: dict[int, Encoding] | None = None) -> list[Stream]:
+    def streams(self, given: dict[int, Encoding] | None = None, dialog_of: DialogOf | None = None) -> list[Stream]:
         packets = self.packets()
         collector = RtpCollector()
         collector.add(packets, 0)
-        return find_streams(collector, self.flows(), [packets.octets], given=given)
+        return find_streams(collector, self.flows(), [packets.octets], given=given, dialog_of=dialog_of)
 
 
 def talk(

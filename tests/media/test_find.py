@@ -8,7 +8,8 @@ from rtpaudit.media.calls import pair_streams
 from rtpaudit.media.streams import Content
 from rtpaudit.signalling.payload_types import Encoding
 from tests.craft import rtp
-from tests.media.datagrams import Datagrams, joined, packet, talk
+from tests.media.datagrams import MS, START_MS, Datagrams, joined, packet, talk
+from tests.media.made_calls import party, sip_call
 
 
 def test_three_packets_are_a_stream():
@@ -149,3 +150,14 @@ def test_interfaces_of_one_file_are_merged_by_time():
     (stream,) = made.streams()
     assert stream.packets.extended.tolist() == list(range(40))
     assert (np.diff(stream.packets.time_ns) > 0).all()
+
+
+def test_a_restart_is_a_new_stream_under_a_new_dialog_alone():
+    made = joined(talk(range(100)), talk(range(30_000, 30_100), start_ms=5000.0, first_ticks=9_000_000))
+    begun_ns = round((START_MS + 4000) * MS)
+    first = sip_call("one@example.com", party("0142", "192.0.2.1"), party("0199", "198.51.100.1"))
+    second = sip_call("two@example.com", party("0142", "192.0.2.1"), party("0199", "198.51.100.1"), started_ns=begun_ns)
+    two = made.streams(dialog_of=lambda flow, time_ns: second if time_ns > begun_ns else first)
+    assert [(len(one.packets), one.packets.segment.max()) for one in two] == [(100, 0), (100, 0)]
+    (one,) = made.streams(dialog_of=lambda flow, time_ns: first)
+    assert one.packets.segment.max() == 1
