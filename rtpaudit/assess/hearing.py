@@ -12,6 +12,7 @@ from rtpaudit.audio.digits import Digit, digits_of
 from rtpaudit.audio.encryption import Cipher, CipherVerdict, cipher_of
 from rtpaudit.audio.law import LawVerdict, law_of
 from rtpaudit.audio.level import SpeechLevel, WindowLevels, level_of, noise_level_dbov, window_levels
+from rtpaudit.audio.onsets import Onsets, onsets_of
 from rtpaudit.audio.payload import Idle, Repetition, idle_of, repetition_of
 from rtpaudit.audio.progress import ProgressTone, progress_tones
 from rtpaudit.audio.robbed_bits import RobbedBits, robbed_bits_of
@@ -20,12 +21,15 @@ from rtpaudit.audio.silence import Passage, dead_air
 from rtpaudit.audio.slips import Slips, slips_of
 from rtpaudit.audio.spectrum import Band, Hum, band_of, hum_of, spectra_of
 from rtpaudit.audio.splices import Splices, splices_of
+from rtpaudit.audio.tandem import Tandem, tandem_of
 from rtpaudit.audio.tones import SteadyTone, steady_tones, tone_bursts
 from rtpaudit.capture.frames import Octets
 from rtpaudit.media.streams import Stream
 
 Samples = NDArray[np.int16]
 G711 = ("PCMU", "PCMA")
+PAUSE_S = 0.2
+"""in which nothing is sent, from which speech that follows begins anew"""
 
 
 @dataclass(slots=True)
@@ -50,6 +54,9 @@ class StreamSound:
     """of G.711 alone"""
     slips: Slips | None
     splices: Splices | None
+    tandem: Tandem | None = None
+    onsets: Onsets | None = None
+    """None where silence is not suppressed"""
     payload: "PayloadSigns" = field(default_factory=lambda: PayloadSigns())
 
 
@@ -106,8 +113,28 @@ def received_mask(
     return mask
 
 
+def begins_after_pauses(
+    stream: Stream, rows: NDArray[np.int64], position: NDArray[np.int64], rate_hz: int
+) -> NDArray[np.int64]:
+    """First sample of each talkspurt that follows a pause of which no packet is missing. [samples]"""
+    packets = stream.packets
+    order = np.argsort(position, kind="stable")
+    place, number = position[order], packets.extended[rows[order]]
+    others = np.sort(packets.extended[~packets.duplicate & ~is_audio(stream)])
+    between = np.diff(np.searchsorted(others, number))
+    step = np.diff(place)
+    usual = round(stream.packet_time_ms * rate_hz / 1000.0) if stream.packet_time_ms > 0 else 0
+    paused = (step > usual + PAUSE_S * rate_hz) & (np.diff(number) == 1 + between)
+    return np.asarray(place[1:][paused])
+
+
 def hear(
-    stream: Stream, samples: Samples, received: NDArray[np.bool_] | None, rate_hz: int, origin_ns: int
+    stream: Stream,
+    samples: Samples,
+    received: NDArray[np.bool_] | None,
+    rate_hz: int,
+    origin_ns: int,
+    begins: NDArray[np.int64],
 ) -> StreamSound:
     """Measure the sound of one stream.
 
@@ -122,6 +149,8 @@ def hear(
         [Hz]
     origin_ns : int
         Capture time of the first sample. [ns]
+    begins : int64 array, shape (talkspurts,)
+        As ``begins_after_pauses`` gives them. [samples]
     """
     scanned = scan(samples, rate_hz, received, stream.encoding)
     level = level_of(scanned)
@@ -145,4 +174,6 @@ def hear(
         law=law_of(samples, rate_hz) if stream.encoding in G711 else None,
         slips=slips_of(samples, rate_hz, received, packet),
         splices=splices_of(samples, rate_hz, packet, received) if packet else None,
+        tandem=tandem_of(samples, stream.encoding),
+        onsets=onsets_of(samples, rate_hz, begins, level),
     )

@@ -2,7 +2,7 @@
 
 from collections.abc import Sequence
 
-from rtpaudit.assess.hearing import StreamSound, hear, payload_signs, received_mask
+from rtpaudit.assess.hearing import StreamSound, begins_after_pauses, hear, payload_signs, received_mask
 from rtpaudit.assess.laying import lay_out, sent_samples, silence_reason
 from rtpaudit.assess.pairs import CallSound, echo_loudness, sound_of_call
 from rtpaudit.assess.stream import Measured
@@ -49,7 +49,8 @@ def _hear(one: Measured, buffers: Sequence[Octets]) -> StreamSound | None:
     if len(samples) < SHORTEST_S * laid.rate_hz:
         return None
     received = received_mask(one.stream, laid.rows, laid.position, laid.rate_hz, len(samples))
-    return hear(one.stream, samples, received, laid.rate_hz, laid.origin_ns)
+    begins = begins_after_pauses(one.stream, laid.rows, laid.position, laid.rate_hz)
+    return hear(one.stream, samples, received, laid.rate_hz, laid.origin_ns, begins)
 
 
 def _note(one: Measured, sound: StreamSound) -> None:
