@@ -5,6 +5,7 @@ from collections.abc import Sequence
 import numpy as np
 from numpy.typing import NDArray
 
+from rtpaudit.assess.media_time import common_ticks
 from rtpaudit.assess.playback import Playback, packet_ticks
 from rtpaudit.capture.frames import Octets
 from rtpaudit.codecs.comfort_noise import ComfortNoise, generate
@@ -78,7 +79,7 @@ def _places(
     if len(distinct) == len(rows):
         return position
     place = positions(
-        packets.media_ticks[distinct],
+        common_ticks(stream)[distinct],
         packets.time_ns[distinct],
         stream.clock_rate_hz,
         rate_hz,

@@ -6,6 +6,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from rtpaudit.assess.media_time import common_ticks
 from rtpaudit.assess.playback import packet_ticks
 from rtpaudit.capture.frames import Octets
 from rtpaudit.codecs import codec_of, decode, sample_table
@@ -56,7 +57,7 @@ def lay_out(stream: Stream) -> Laid:
     chosen = fits[packets.payload_type] & (packets.content == Content.AUDIO) & ~packets.duplicate
     rows = np.flatnonzero(chosen)
     position = positions(
-        packets.media_ticks[rows], packets.time_ns[rows], stream.clock_rate_hz, rate, packets.segment[rows]
+        common_ticks(stream)[rows], packets.time_ns[rows], stream.clock_rate_hz, rate, packets.segment[rows]
     )
     early = packets.time_ns[rows] - (position * (NS_PER_S / rate)).astype(np.int64)
     return Laid(rows, position, rate, int(early.min()) if len(rows) else int(packets.time_ns[0]))

@@ -6,6 +6,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
+from rtpaudit.assess.media_time import common_ticks
 from rtpaudit.codecs import CODECS
 from rtpaudit.media.streams import Content, Stream
 from rtpaudit.metrics.bursts import BurstGap, burst_ratio, bursts_and_gaps, loss_runs
@@ -49,12 +50,13 @@ def play_back(stream: Stream, network: NetworkFigures, settings: Playout, starte
     if not len(rows) or stream.clock_rate_hz == 0:
         return None
     sequence, segment = packets.extended[distinct], packets.segment[distinct]
-    time_ns, ticks = packets.time_ns[rows], packets.media_ticks[rows]
+    media_ticks = common_ticks(stream)
+    time_ns, ticks = packets.time_ns[rows], media_ticks[rows]
     pause = round(settings.reset_pause_ms * stream.clock_rate_hz / MS_PER_S)
     spurt = talkspurts(
         sequence,
         segment,
-        packets.media_ticks[distinct],
+        media_ticks[distinct],
         packet_ticks(stream)[distinct],
         pause,
         audio=None if len(rows) == len(distinct) else audio,
@@ -97,7 +99,10 @@ def is_audio(stream: Stream) -> NDArray[np.bool_]:
 
 
 def packet_ticks(stream: Stream) -> NDArray[np.int64]:
-    """Media time that each packet carries, by its length where that tells, else that of most packets. [ticks]"""
+    """Media time that each packet carries, by its length where that tells, else that of most packets.
+
+    In ticks of the stream's main clock, whatever the packet's own.
+    """
     packets = stream.packets
     usual = 0 if np.isnan(stream.packet_time_ms) else round(stream.packet_time_ms * stream.clock_rate_hz / MS_PER_S)
     ticks = np.full(len(packets), usual, np.int64)
@@ -106,5 +111,5 @@ def packet_ticks(stream: Stream) -> NDArray[np.int64]:
         if codec is not None and codec.octets_per_block and not stream.encrypted:
             mine = packets.payload_type == number
             samples = packets.length[mine] // codec.octets_per_block * codec.samples_per_block
-            ticks[mine] = samples * encoding.clock_rate_hz // codec.sampling_rate(encoding.clock_rate_hz)
+            ticks[mine] = samples * stream.clock_rate_hz // codec.sampling_rate(encoding.clock_rate_hz)
     return ticks

@@ -3,9 +3,9 @@
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import NDArray
 
 from rtpaudit.assess.hearing import PayloadSigns, StreamSound
+from rtpaudit.assess.media_time import clock_rates
 from rtpaudit.assess.playback import Playback, is_audio, play_back
 from rtpaudit.assess.rating import Path
 from rtpaudit.assess.reported import FarEnd
@@ -102,14 +102,3 @@ def note_far_end(one: Measured, far: FarEnd | None) -> None:
         one.figures.round_trip_ms = far.round_trip_ms
         one.figures.loss_before_pct = far.loss_before_pct
         one.figures.loss_after_pct = far.loss_after_pct
-
-
-def clock_rates(stream: Stream) -> NDArray[np.int32] | int:
-    """Clock rate of every packet, one number where all payload types share it. [Hz]"""
-    rates = {encoding.clock_rate_hz for encoding in stream.encodings.values()}
-    if len(rates) <= 1:
-        return stream.clock_rate_hz
-    table = np.zeros(128, np.int32)
-    for number, encoding in stream.encodings.items():
-        table[number] = encoding.clock_rate_hz
-    return np.asarray(table[stream.packets.payload_type], np.int32)
