@@ -31,6 +31,9 @@ MOST_CLOCK_SETS = 32
 SMALL_SCATTER_MS = 0.1
 """Scatter of block minima up to which the envelope is good enough whatever the means do."""
 
+MOST_PPM = 5000.0
+"""No clock of audio is off by so much (common practice): such a slope is a growing queue, or a fault of timestamps."""
+
 STEEPEST = 0.1
 """Bound of the search, as a slope on top of the first guess."""
 
@@ -69,8 +72,8 @@ def clock_skew(of: Delays) -> Skew:
     Returns
     -------
     Skew
-        NaN below 30 s of audio. The error takes what blocks are off the line for independent, so it is about right for
-        jitter and too small for delays that wander.
+        NaN below 30 s of audio, and where no clock can be so far off. The error takes what blocks are off the line for
+        independent, so it is about right for jitter and too small for delays that wander.
 
     References
     ----------
@@ -96,7 +99,8 @@ def clock_skew(of: Delays) -> Skew:
         piece = split_at_steps(blocks.mean_at, blocks.mean, blocks.piece)
         slope, rest = sturdy_line(blocks.mean_at, blocks.mean, blocks.packets, piece)
         error = slope_error(blocks.mean_at, rest, piece)
-    return Skew(-(guess + slope) / PARTS_PER_MILLION, error / PARTS_PER_MILLION)
+    ppm = -(guess + slope) / PARTS_PER_MILLION
+    return Skew(ppm, error / PARTS_PER_MILLION) if abs(ppm) <= MOST_PPM else Skew(float("nan"), float("nan"))
 
 
 def _long_enough(of: Delays) -> bool:

@@ -8,7 +8,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from rtpaudit.metrics.delay import delays
+from rtpaudit.metrics.delay import Delays, delays
 from rtpaudit.metrics.skew import Skew, _supporting_slope, clock_skew
 from tests.metrics.streams import MS, Columns, paced
 from tests.naive import timing as naive
@@ -123,3 +123,10 @@ def test_the_line_under_all_delays_is_that_of_a_search_over_all_pairs(steps) -> 
             for slope in (found, wanted)
         ]
         assert distance[0] == pytest.approx(distance[1], rel=1e-6, abs=1e-6)
+
+
+def test_a_slope_that_no_clock_has_is_no_skew():
+    """A queue that grows by 100 ms in every second of a minute is 100,000 ppm of slope, and says nothing of a clock."""
+    at_ms = np.arange(3000) * 22.0
+    growing = Delays(elapsed_ms=at_ms, delay_ms=at_ms - np.arange(3000) * 20.0, timeline=None)
+    assert np.isnan(clock_skew(growing).ppm)
