@@ -1,4 +1,7 @@
-"""Frames of a stream in which a sample tells the next, with the errors that linear prediction makes in them."""
+"""Frames of a stream in which a sample tells the next, with the errors that linear prediction makes in them.
+
+Lengths and limits are our own, chosen on recorded and synthetic voices.
+"""
 
 from dataclasses import dataclass
 
@@ -62,6 +65,7 @@ def judged_frames(samples: Samples, received: Mask | None = None) -> Judged:
     Returns
     -------
     Judged
+        At most ``FRAMES`` of them.
     """
     starts = np.arange(CONTEXT, len(samples) - CONTEXT, FRAME)
     if len(starts) > 4 * FRAMES:

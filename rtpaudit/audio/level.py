@@ -21,6 +21,8 @@ PAUSES_SHARE = 0.02
 LEAST_TENTHS = 20
 STEADY_DB = 3.0
 """a stream whose soft tenths of a second are this close to its level does not speak (common practice)"""
+NOISE_CREST = 4.7
+"""square of peak over root mean square in 10 ms: 2 for one tone, 4 for two, 6 for noise (common practice)"""
 FULL_SCALE = 32768.0
 SILENCE_DBOV = -127.0
 """level of digital silence: the lowest that the noise level octet of RFC 3389, 3.1 can say"""
@@ -128,8 +130,9 @@ def noise_level_dbov(scanned: Scan, level: SpeechLevel) -> float:
     Notes
     -----
     Noise less than about 16 dB below the speech keeps P.56 from seeing pauses. Where they make less than ``PAUSES_S``
-    and ``PAUSES_SHARE``, noise is the level that a twentieth of the tenths of a second stay below (common practice),
-    unless that is hardly below the level of the whole: a steady sound may be a tone as well as noise.
+    and ``PAUSES_SHARE``, noise is the level that a twentieth of the tenths of a second stay below (common practice).
+    Where that is hardly below the level of the whole, the sound is steady: noise if its crest is that of noise, else
+    a tone, and then there is no telling.
     """
     power, there = scanned.power(), scanned.received > 0
     pauses = power[there & (scanned.reached <= _thresholds_below(level.threshold_dbov))]
@@ -139,7 +142,11 @@ def noise_level_dbov(scanned: Scan, level: SpeechLevel) -> float:
     if len(tenths) < LEAST_TENTHS:
         return float("nan")
     floor = float(dbov(float(np.percentile(tenths, 5))))
-    return floor if floor < level.long_term_dbov - STEADY_DB else float("nan")
+    if floor < level.long_term_dbov - STEADY_DB:
+        return floor
+    with np.errstate(invalid="ignore", divide="ignore"):
+        crest = float(np.median(scanned.peak[there] ** 2.0 / power[there]))
+    return level.long_term_dbov if crest > NOISE_CREST else float("nan")
 
 
 def window_levels(scanned: Scan, level: SpeechLevel) -> WindowLevels:

@@ -24,7 +24,7 @@ def predictors(frames: Frames, order: int) -> tuple[NDArray[np.float64], NDArray
 
     Notes
     -----
-    Hann window, lags by FFT, Levinson-Durbin recursion for all frames at once.
+    Hann window, lags by FFT, Levinson-Durbin recursion for all frames at once: textbook methods, common practice.
     """
     length = frames.shape[1]
     centred = (frames - frames.mean(axis=1, keepdims=True)) * np.hanning(length + 2)[1:-1]

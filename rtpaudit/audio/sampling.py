@@ -1,4 +1,4 @@
-"""Groups of consecutive payloads spread over a stream, so that a measure need not read every octet."""
+"""Groups of consecutive payloads spread over a stream: a measure need not read every octet (common practice)."""
 
 from collections.abc import Iterator
 

@@ -18,7 +18,7 @@ from rtpaudit.audio.level import (
 )
 from rtpaudit.audio.scan import scan
 from rtpaudit.codecs import g711
-from tests.audio.sounds import RATE, inputs_of, noise, reader, rows_of, silence, sine, to_int16
+from tests.audio.sounds import RATE, inputs_of, noise, reader, rows_of, silence, sine, through, to_int16
 from tests.naive import audio as naive
 
 FIELD = {"long_term": "long_term_dbov", "active_level": "active_dbov", "activity": "activity_pct"}
@@ -145,9 +145,18 @@ def test_noise_so_loud_that_p56_sees_no_pause_is_still_measured():
     assert noise_level_dbov(scanned, level_of(scanned)) == pytest.approx(-38, abs=0.7)
 
 
-def test_a_steady_tone_has_no_pauses_to_measure_noise_in():
-    scanned = scan(to_int16(sine(1004, 10, -16)), RATE)
+@pytest.mark.parametrize("sound", [sine(1004, 10, -16), sine(350, 10, -19) + sine(440, 10, -19)])
+def test_a_steady_tone_has_no_pauses_to_measure_noise_in(sound):
+    scanned = scan(to_int16(sound + noise(10, -60)), RATE)
     assert np.isnan(noise_level_dbov(scanned, level_of(scanned)))
+
+
+@pytest.mark.parametrize("law", ["PCMU", "PCMA"])
+@pytest.mark.parametrize("level", [-20, -45, -60])
+def test_steady_noise_is_noise_though_p56_takes_it_for_speech(law, level):
+    scanned = scan(through(law, to_int16(noise(10, level))), RATE)
+    assert level_of(scanned).activity_pct > 95
+    assert noise_level_dbov(scanned, level_of(scanned)) == pytest.approx(level, abs=0.5)
 
 
 def test_windows_add_up_to_the_stream():
