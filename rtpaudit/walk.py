@@ -19,6 +19,8 @@ from rtpaudit.capture.frames import Damage, Octets
 from rtpaudit.decode import Decoder, Flows
 from rtpaudit.decode.icmp import MOST_ERRORS, IcmpError, quoted
 from rtpaudit.errors import UnusableArguments
+from rtpaudit.findings import diagnose
+from rtpaudit.findings.rule import Finding
 from rtpaudit.media.agreed import Agreed
 from rtpaudit.media.calls import Call
 from rtpaudit.media.find import find_streams
@@ -80,12 +82,14 @@ class Audit:
         profile: Profile,
         legs: Sequence[Call] = (),
         heard: Sequence[Heard] = (),
+        diagnosis: Sequence[Finding] = (),
     ) -> None:
         self.assessment = assessment
         self.profile = profile
         self.sound: AudioSource = sound
         self._legs = legs
         self._heard = heard
+        self.diagnosis = diagnosis
 
     @cached_property
     def tables(self) -> Mapping[str, "DataFrame"]:
@@ -93,7 +97,7 @@ class Audit:
         from rtpaudit.report.tables import build_tables
 
         found = self.assessment
-        return build_tables(found, signalling=found.messages, events=found.events, reports=found.reports)
+        return build_tables(found, self.diagnosis, found.messages, found.events, found.reports)
 
     def __getattr__(self, name: str) -> Any:
         # Tables are attributes: audit.calls, audit.streams and so on, by the list of columns.py.
@@ -218,7 +222,7 @@ def audit(
     )
     assessment.calls_in_all = calls_in_all
     source = SoundSource(buffers, assessment.streams, settings.conceals_loss)
-    return Audit(assessment, source, settings, legs, heard)
+    return Audit(assessment, source, settings, legs, heard, diagnose(assessment, settings))
 
 
 def _from(progress: Progress | None, done: int, total: int) -> Callable[[int], None]:
