@@ -115,7 +115,12 @@ STREAMS = (
         "Arrivals with a sequence number below the highest seen so far, duplicates left out.",
         "RFC 4737, 3",
     ),
-    _count("packets_recovered", "Lost packets that redundant payloads brought back.", "RFC 2198"),
+    _count(
+        "packets_recovered",
+        "Lost packets that redundant payloads brought back. They stay counted as lost; those that came in time to be "
+        "played are left out of bursts and ratings, and are heard.",
+        "RFC 2198",
+    ),
     _count("sequence_gaps", "Runs of missing sequence numbers.", "counted"),
     _count("longest_gap_packets", "Longest run of missing sequence numbers.", "counted"),
     _number(

@@ -55,7 +55,7 @@ def assess(
     windows = _windows(measured, rated, profile)
     steps = budgets(
         rated,
-        [one.network.packets_lost for one in measured],
+        [one.lost_to_the_ear for one in measured],
         [len(one.playback.discarded) if one.playback else 0 for one in measured],
     )
     assessed = [
@@ -163,10 +163,8 @@ def _windows(measured: Sequence[Measured], rated: Rated, profile: Profile) -> li
     """The windows of every stream, all rated in one go."""
     found = [one.network.windows for one in measured]
     counts = np.array([len(one.from_s) for one in found], np.int64)
-    discarded = [one.playback.discarded_per_window if one.playback else None for one in measured]
     missed = [
-        one.packets_lost if late is None else one.packets_lost + late
-        for one, late in zip(found, discarded, strict=True)
+        one.network.windows.packets_lost + (one.playback.missed_per_window if one.playback else 0) for one in measured
     ]
     expected = np.concatenate([np.empty(0), *(one.packets_expected for one in found)])
     with np.errstate(invalid="ignore"):
@@ -178,7 +176,7 @@ def _windows(measured: Sequence[Measured], rated: Rated, profile: Profile) -> li
             from_s=one.from_s,
             packets_expected=one.packets_expected,
             packets_lost=one.packets_lost,
-            packets_discarded=discarded[k],
+            packets_discarded=playback.discarded_per_window if (playback := measured[k].playback) else None,
             loss_pct=one.loss_pct,
             jitter_ms=one.jitter_ms,
             pdv_p95_ms=one.pdv_p95_ms,

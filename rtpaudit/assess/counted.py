@@ -66,7 +66,7 @@ def _part(windows: NDArray[np.bool_], one: Measured, rated: Rated, k: int, profi
     expected = int(table.packets_expected[windows].sum())
     missed = int(table.packets_lost[windows].sum())
     if one.playback is not None:
-        missed += int(one.playback.discarded_per_window[windows].sum())
+        missed += int(one.playback.missed_per_window[windows].sum())
     if expected == 0:
         return CountedPart(0, float("nan"))
     R = rating(

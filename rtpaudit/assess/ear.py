@@ -7,11 +7,12 @@ from numpy.typing import NDArray
 
 from rtpaudit.assess.media_time import common_ticks
 from rtpaudit.assess.playback import Playback, packet_ticks
+from rtpaudit.assess.restored import before_in_sequence
 from rtpaudit.capture.frames import Octets
 from rtpaudit.codecs.comfort_noise import ComfortNoise, generate
 from rtpaudit.errors import MalformedPacket
 from rtpaudit.media.streams import Content, Stream
-from rtpaudit.playout.heard import heard, lost_stretches, noise_stretches
+from rtpaudit.playout.heard import Stretches, heard, lost_stretches, noise_stretches
 from rtpaudit.playout.timeline import positions
 
 Samples = NDArray[np.int16]
@@ -61,7 +62,7 @@ def heard_samples(
     if playback is not None:
         played[playback.discarded] = False
     sequence, segment = packets.extended[distinct], packets.segment[distinct]
-    lost = lost_stretches(place, sizes, sequence, segment, played[distinct])
+    lost = _stretches(stream, playback, place, sizes, distinct, played[distinct], rate_hz)
     made = heard(sent, lost, conceals_loss and stream.encoding in CONCEALED and rate_hz == 8000)
     noise = packets.content[distinct] == Content.COMFORT_NOISE
     if noise.any():
@@ -69,6 +70,34 @@ def heard_samples(
         order = np.lexsort((sequence[noise], segment[noise]))
         made = _with_noise(made, _noises(stream, distinct[noise][order], buffers), begin, end)
     return made
+
+
+def _stretches(
+    stream: Stream,
+    playback: Playback | None,
+    place: NDArray[np.int64],
+    sizes: NDArray[np.int64],
+    distinct: NDArray[np.int64],
+    played: NDArray[np.bool_],
+    rate_hz: int,
+) -> Stretches:
+    """Stretches that nothing came in time for, recovered packets taken into account."""
+    packets, found = stream.packets, stream.recovered
+    sequence, segment = packets.extended[distinct], packets.segment[distinct]
+    if found is None:
+        return lost_stretches(place, sizes, sequence, segment, played)
+    before = before_in_sequence(stream, distinct)
+    ticks = found.media_ticks - packets.media_ticks[distinct[before]]
+    restored = playback.restored if playback is not None else None
+    in_time = restored.in_time if restored is not None else np.ones(len(found), np.bool_)
+    lengths = packet_ticks(stream, found) * rate_hz // stream.clock_rate_hz
+    return lost_stretches(
+        np.concatenate([place, place[before] + ticks * rate_hz // stream.clock_rate_hz]),
+        np.concatenate([sizes, np.where(found.content == Content.AUDIO, lengths, 0)]),
+        np.concatenate([sequence, found.extended]),
+        np.concatenate([segment, found.segment]),
+        np.concatenate([played, in_time]),
+    )
 
 
 def _places(

@@ -2,16 +2,18 @@
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
 from rtpaudit.assess.media_time import common_ticks
 from rtpaudit.assess.playback import packet_ticks
+from rtpaudit.assess.restored import before_in_sequence
 from rtpaudit.capture.frames import Octets
 from rtpaudit.codecs import codec_of, decode, sample_table
 from rtpaudit.errors import MissingCodec
-from rtpaudit.media.streams import Content, Stream
+from rtpaudit.media.streams import Content, Stream, StreamPackets
 from rtpaudit.playout.timeline import gather, lay, lay_by_table, positions, span
 from rtpaudit.units import NS_PER_S
 
@@ -32,6 +34,9 @@ class Laid:
     rate_hz: int
     origin_ns: int
     """capture time at which sample 0 arrived, or would have arrived with the least delay seen"""
+    recovered: NDArray[np.int64]
+    """rows of the stream's recovered packets that carry audio"""
+    recovered_position: NDArray[np.int64]
 
 
 def silence_reason(stream: Stream) -> str:
@@ -60,7 +65,23 @@ def lay_out(stream: Stream) -> Laid:
         common_ticks(stream)[rows], packets.time_ns[rows], stream.clock_rate_hz, rate, packets.segment[rows]
     )
     early = packets.time_ns[rows] - (position * (NS_PER_S / rate)).astype(np.int64)
-    return Laid(rows, position, rate, int(early.min()) if len(rows) else int(packets.time_ns[0]))
+    origin_ns = int(early.min()) if len(rows) else int(packets.time_ns[0])
+    return Laid(rows, position, rate, origin_ns, *_lay_recovered(stream, rows, position, rate, fits))
+
+
+def _lay_recovered(
+    stream: Stream, rows: NDArray[np.int64], position: NDArray[np.int64], rate_hz: int, fits: NDArray[np.bool_]
+) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
+    """Recovered packets that carry audio, and their places by the media time since the packet before them."""
+    found = stream.recovered
+    if found is None or not len(rows):
+        return np.empty(0, np.int64), np.empty(0, np.int64)
+    chosen = np.flatnonzero(fits[found.payload_type] & (found.content == Content.AUDIO))
+    before = before_in_sequence(stream, rows)[chosen]
+    ticks = found.media_ticks[chosen] - stream.packets.media_ticks[rows[before]]
+    place = position[before] + ticks * rate_hz // stream.clock_rate_hz
+    inside = place >= 0
+    return chosen[inside], place[inside]
 
 
 def _decodes_at(encoding: str, clock_rate_hz: int, rate_hz: int) -> bool:
@@ -72,39 +93,42 @@ def _decodes_at(encoding: str, clock_rate_hz: int, rate_hz: int) -> bool:
 
 def sent_samples(stream: Stream, laid: Laid, buffers: Sequence[Octets]) -> Samples:
     """What the payloads of a stream say, on its timeline. Raises MissingCodec."""
-    packets = stream.packets
-    types = packets.payload_type[laid.rows]
-    present = np.flatnonzero(np.bincount(types, minlength=128)).tolist()
+    pieces = [_pieces(stream.packets, laid.rows, laid.position)]
+    if stream.recovered is not None:
+        pieces.append(_pieces(stream.recovered, laid.recovered, laid.recovered_position))
+    types, buffer, start, length, place = (np.concatenate(columns) for columns in zip(*pieces, strict=True))
     sizes = packet_ticks(stream)[laid.rows] * laid.rate_hz // stream.clock_rate_hz
     total = min(span(laid.position, sizes), LONGEST_TIMELINE_S * laid.rate_hz)
     timeline = np.zeros(total, np.int16)
-    for number in present:
-        for buffer in np.unique(packets.buffer[laid.rows]):
-            mine = (types == number) & (packets.buffer[laid.rows] == buffer)
-            rows, place = laid.rows[mine], laid.position[mine]
-            _lay_onto(timeline, stream.encodings[number].name, stream, rows, place, buffers[buffer])
+    for number in np.flatnonzero(np.bincount(types, minlength=128)).tolist():
+        for octets in np.unique(buffer).tolist():
+            mine = (types == number) & (buffer == octets)
+            name = stream.encodings[number].name
+            _lay_onto(timeline, name, start[mine], length[mine], place[mine], buffers[octets])
     return timeline
+
+
+def _pieces(packets: StreamPackets, rows: NDArray[np.int64], position: NDArray[np.int64]) -> tuple[NDArray[Any], ...]:
+    """Payload type, buffer, first octet, length and place of some packets."""
+    return packets.payload_type[rows], packets.buffer[rows], packets.start[rows], packets.captured[rows], position
 
 
 def _lay_onto(
     timeline: Samples,
     encoding: str,
-    stream: Stream,
-    rows: NDArray[np.int64],
+    start: NDArray[np.int64],
+    length: NDArray[np.int32],
     place: NDArray[np.int64],
     octets: Octets,
 ) -> None:
-    packets = stream.packets
     table = sample_table(encoding)
     if table is not None:
-        start, length = packets.start[rows], packets.captured[rows]
         lay_by_table(table, octets, start, length, place, len(timeline), onto=timeline)
         return
     # Decoders that remember the past need the order of media time.
     order = np.argsort(place, kind="stable")
-    rows, place = rows[order], place[order]
-    payloads, offsets = gather(octets, packets.start[rows], packets.captured[rows])
+    payloads, offsets = gather(octets, start[order], length[order])
     samples, ends = decode(encoding, payloads, offsets)
-    laid = lay(samples, ends, place, len(timeline))
+    laid = lay(samples, ends, place[order], len(timeline))
     held = laid != 0
     timeline[held] = laid[held]

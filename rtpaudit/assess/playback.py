@@ -7,8 +7,9 @@ import numpy as np
 from numpy.typing import NDArray
 
 from rtpaudit.assess.media_time import common_ticks
+from rtpaudit.assess.restored import Restored, restore
 from rtpaudit.codecs import CODECS
-from rtpaudit.media.streams import Content, Stream
+from rtpaudit.media.streams import Content, Stream, StreamPackets
 from rtpaudit.metrics.bursts import BurstGap, burst_ratio, bursts_and_gaps, loss_runs
 from rtpaudit.metrics.network import NetworkFigures
 from rtpaudit.metrics.windows import window_of
@@ -34,11 +35,23 @@ class Playback:
     burst_gap: BurstGap
     other_buffers: Callable[[], WhatIf]
     """works out the same arrivals at fixed buffers of other delays"""
+    restored: Restored | None = None
+    """lost packets that came within others; None where there are none"""
 
     @property
     def discard_pct(self) -> float:
         """Late packets of those expected. [%]"""
         return percent(len(self.discarded), self.expected)
+
+    @property
+    def restored_packets(self) -> int:
+        """Lost packets that came within others in time, and so were heard."""
+        return self.restored.count if self.restored else 0
+
+    @property
+    def missed_per_window(self) -> NDArray[np.int64]:
+        """What the ear missed beyond the lost packets: late ones, less restored ones."""
+        return self.discarded_per_window - (self.restored.per_window if self.restored else 0)
 
 
 def play_back(stream: Stream, network: NetworkFigures, settings: Playout, started_ns: int) -> Playback | None:
@@ -63,12 +76,14 @@ def play_back(stream: Stream, network: NetworkFigures, settings: Playout, starte
     )
     skew = network.clock_skew_ppm
     played = play(time_ns, ticks, spurt, stream.clock_rate_hz, settings, skew)
+    restored = restore(stream, network, rows, played, started_ns)
 
     def other_buffers() -> WhatIf:
-        fixed = played
+        fixed, again = played, restored
         if settings.kind != "fixed":
             fixed = play(time_ns, ticks, spurt, stream.clock_rate_hz, replace(settings, kind="fixed"), skew)
-        return what_if(fixed.required_ns, sequence, segment, audio)
+            again = restore(stream, network, rows, fixed, started_ns)
+        return _other_buffers(stream, fixed, again, sequence, segment, audio)
 
     discarded = rows[~played.played]
     kept = np.ones(len(packets), np.bool_)
@@ -76,6 +91,8 @@ def play_back(stream: Stream, network: NetworkFigures, settings: Playout, starte
     place = network.sequence.place
     if len(discarded):
         place = place[kept[network.sequence.order]]
+    if restored is not None:
+        place = np.union1d(place, restored.place[restored.in_time])
     runs = loss_runs(place, network.packets_expected)
     windows = len(network.windows.from_s)
     return Playback(
@@ -89,6 +106,27 @@ def play_back(stream: Stream, network: NetworkFigures, settings: Playout, starte
         burst_ratio=burst_ratio(runs),
         burst_gap=bursts_and_gaps(runs, stream.packet_time_ms),
         other_buffers=other_buffers,
+        restored=restored,
+    )
+
+
+def _other_buffers(
+    stream: Stream,
+    fixed: Played,
+    restored: Restored | None,
+    sequence: NDArray[np.int64],
+    segment: NDArray[np.int32],
+    audio: NDArray[np.bool_],
+) -> WhatIf:
+    """The arrivals at other buffers, recovered packets among them."""
+    found = stream.recovered
+    if found is None or restored is None:
+        return what_if(fixed.required_ns, sequence, segment, audio)
+    return what_if(
+        np.concatenate([fixed.required_ns, restored.required_ns[restored.audio]]),
+        np.concatenate([sequence, found.extended]),
+        np.concatenate([segment, found.segment]),
+        np.concatenate([audio, restored.audio]),
     )
 
 
@@ -98,12 +136,12 @@ def is_audio(stream: Stream) -> NDArray[np.bool_]:
     return np.asarray((content == Content.AUDIO) | (content == Content.REDUNDANT))
 
 
-def packet_ticks(stream: Stream) -> NDArray[np.int64]:
+def packet_ticks(stream: Stream, packets: StreamPackets | None = None) -> NDArray[np.int64]:
     """Media time that each packet carries, by its length where that tells, else that of most packets.
 
-    In ticks of the stream's main clock, whatever the packet's own.
+    In ticks of the stream's main clock, whatever the packet's own. ``packets`` are the stream's, or its recovered ones.
     """
-    packets = stream.packets
+    packets = stream.packets if packets is None else packets
     usual = 0 if np.isnan(stream.packet_time_ms) else round(stream.packet_time_ms * stream.clock_rate_hz / MS_PER_S)
     ticks = np.full(len(packets), usual, np.int64)
     for number, encoding in stream.encodings.items():

@@ -13,6 +13,7 @@ from rtpaudit.assess.results import STREAM_FIGURES, GapColumns, StreamFigures
 from rtpaudit.media.streams import Stream
 from rtpaudit.metrics.network import NetworkFigures, network_figures
 from rtpaudit.profile import Profile
+from rtpaudit.units import percent
 
 
 @dataclass(slots=True)
@@ -39,13 +40,24 @@ class Measured:
             found.first_missing & 0xFFFF, found.packets_missing, found.at_ns, found.duration_ms, found.after_s
         )
 
+    @property
+    def lost_to_the_ear(self) -> int:
+        """Lost packets, less those that came within others in time."""
+        return self.network.packets_lost - (self.playback.restored_packets if self.playback else 0)
+
+    def _missed_pct(self) -> float:
+        """Share of the expected packets that the ear missed: lost or late, and not restored. [%]"""
+        if self.playback is None:
+            return self.figures.loss_pct
+        return percent(self.lost_to_the_ear, self.network.packets_expected) + self.playback.discard_pct
+
     def path(self, profile: Profile) -> Path:
         """What the rating asks of this stream."""
         given = profile.network.delay_ms
         trip = float("nan") if self.far_end is None else self.far_end.round_trip_ms
         measured = given is None and not np.isnan(trip)
         return Path(
-            loss_pct=self.figures.loss_pct + (self.playback.discard_pct if self.playback else 0.0),
+            loss_pct=self._missed_pct(),
             burst_ratio=self.figures.burst_ratio,
             network_ms=trip / 2.0 if given is None else given,
             network_basis="rtcp" if measured else "" if given is None else "given",
@@ -73,6 +85,7 @@ def measure(stream: Stream, profile: Profile) -> Measured:
         started_ns,
     )
     figures = StreamFigures(**{name: getattr(network, name) for name in _SHARED})
+    figures.packets_recovered = len(stream.recovered) if stream.recovered is not None else 0
     figures.dscp = int(np.bincount(packets.dscp).argmax())
     playback = play_back(stream, network, profile.playout, started_ns) if stream.media == "audio" else None
     figures.playout_delay_ms = profile.playout.nominal_ms

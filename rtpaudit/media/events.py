@@ -7,9 +7,10 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from rtpaudit.capture.frames import Octets
-from rtpaudit.media.streams import Content, Stream
+from rtpaudit.media.streams import Content, Stream, StreamPackets
 from rtpaudit.units import MS_PER_S
 
 DIGITS = "0123456789*#ABCD"
@@ -33,6 +34,7 @@ class TelephoneEvent:
     clock_rate_hz: int
     level_dbm0: float
     packets: int
+    """that told of it; 0 where only copies within later packets do"""
     end_seen: bool
 
     @property
@@ -62,11 +64,8 @@ def telephone_events(stream: Stream, buffers: Sequence[Octets]) -> list[Telephon
     Repeated ends count as one event, and a lost begin is known from the timestamp of what did arrive. Payloads too
     short to hold an event are passed over.
     """
-    packets = stream.packets
-    rows = np.flatnonzero((packets.content == Content.EVENT) & ~packets.duplicate)
-    rows = rows[np.lexsort((packets.extended[rows], packets.segment[rows]))]
     found: list[TelephoneEvent] = []
-    for row in rows.tolist():
+    for packets, row, copied in _in_order(stream):
         start = int(packets.start[row])
         octets = buffers[packets.buffer[row]][start : start + int(packets.captured[row])].tobytes()
         rate = stream.encodings[int(packets.payload_type[row])].clock_rate_hz
@@ -81,12 +80,28 @@ def telephone_events(stream: Stream, buffers: Sequence[Octets]) -> list[Telephon
                 duration_ticks=duration,
                 clock_rate_hz=rate,
                 level_dbm0=-float(octets[at + 1] & 0x3F),
-                packets=1,
+                packets=int(not copied),
                 end_seen=octets[at + 1] >= 0x80,
             )
             _add(found, told)
             begin += duration
     return found
+
+
+def _in_order(stream: Stream) -> list[tuple[StreamPackets, int, bool]]:
+    """Packets that tell of events, in order of the stream; copies (RFC 4733, 2.6; RFC 2198) stand with their event."""
+    packets, copies = stream.packets, stream.told_again
+    rows = np.flatnonzero((packets.content == Content.EVENT) & ~packets.duplicate)
+    rows = rows[np.lexsort((packets.extended[rows], packets.segment[rows]))]
+    own = [(packets, row, False) for row in rows.tolist()]
+    if copies is None:
+        return own
+    both = own + [(copies, row, True) for row in range(len(copies))]
+    return sorted(both, key=lambda one: (*(int(column[one[1]]) for column in _place(one[0])), one[2]))
+
+
+def _place(packets: StreamPackets) -> tuple[NDArray[np.integer], ...]:
+    return packets.segment, packets.media_ticks, packets.extended
 
 
 def _add(found: list[TelephoneEvent], told: TelephoneEvent) -> None:
@@ -97,7 +112,8 @@ def _add(found: list[TelephoneEvent], told: TelephoneEvent) -> None:
         segment = offset > 0 and offset % LONGEST_DURATION == 0 and offset <= event.duration_ticks
         if event.code == told.code and (offset == 0 or segment):
             event.duration_ticks = max(event.duration_ticks, offset + told.duration_ticks)
-            event.packets += 1
+            event.packets += told.packets
+            event.time_ns = min(event.time_ns, told.time_ns)
             event.end_seen |= told.end_seen
             return
     found.append(told)

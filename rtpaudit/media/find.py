@@ -11,6 +11,7 @@ from rtpaudit.decode.packets import Flows
 from rtpaudit.media.meaning import Meaning, Offered, meaning_of
 from rtpaudit.media.numbering import Numbering, number
 from rtpaudit.media.recognise import is_rtp, survey
+from rtpaudit.media.redundancy import Copies, as_packets, of_lost, unpack
 from rtpaudit.media.rtp import Groups, RtpCollector, merge_interfaces, selected
 from rtpaudit.media.streams import Content, Stream, StreamPackets
 from rtpaudit.signalling.calls import SipCall
@@ -49,6 +50,12 @@ def find_streams(
         meaning_of(groups.rows, slice(*bounds), int(flow), buffers, given or {}, offered)
         for bounds, flow in zip(_spans(groups), groups.flow, strict=True)
     ]
+    groups, copies = unpack(groups, meanings, buffers)
+    for group, span in enumerate(_spans(groups) if copies else ()):
+        if group in copies:
+            types = np.unique(copies[group].payload_type).tolist()
+            flow = int(groups.flow[group])
+            meanings[group] = meaning_of(groups.rows, slice(*span), flow, buffers, given or {}, offered, types)
     rates = np.array([one.encodings[one.main].clock_rate_hz for one in meanings], np.float64)
     numbering = number(groups, rates, np.array([one.step_ticks for one in meanings], np.int64))
     streams = []
@@ -56,8 +63,11 @@ def find_streams(
         rows = slice(*span)
         if dialog_of is not None:
             _part_by_dialog(groups, numbering, rows, int(groups.flow[group]), dialog_of)
-        for packets in _parts(groups, numbering, rows, meanings[group]):
-            streams.append(_stream(packets, groups, group, meanings[group], flows, recording, capture))
+        for first, packets in _parts(groups, numbering, rows, meanings[group]):
+            stream = _stream(packets, groups, group, meanings[group], flows, recording, capture)
+            if group in copies:
+                _add_copies(stream, copies[group], groups, numbering, rows, first, meanings[group])
+            streams.append(stream)
     return sorted(streams, key=lambda one: (int(one.packets.time_ns[0]), int(one.packets.frame[0])))
 
 
@@ -85,17 +95,40 @@ def _part_by_dialog(groups: Groups, numbering: Numbering, span: slice, flow: int
     numbering.stream[span] += later[np.maximum(segment, 0)]
 
 
-def _parts(groups: Groups, numbering: Numbering, span: slice, meaning: Meaning) -> list[StreamPackets]:
-    """The packets of each stream of a group; strays that belong to no run of numbers are left out."""
+def _add_copies(
+    stream: Stream,
+    copies: Copies,
+    groups: Groups,
+    numbering: Numbering,
+    span: slice,
+    first: int,
+    meaning: Meaning,
+) -> None:
+    """What redundant packets hold of a stream besides: lost packets, and events."""
+    content = meaning.content_of
+    mine = copies.those(
+        (numbering.stream[copies.row] == numbering.stream[first]) & (numbering.segment[copies.row] >= 0)
+    )
+    lost, number = of_lost(mine, numbering, span, meaning.step_ticks)
+    if len(lost):
+        stream.recovered = as_packets(lost, number, groups.rows, numbering, first, content)
+    events = mine.those(content[mine.payload_type] == Content.EVENT)
+    if len(events):
+        carrier = numbering.extended[events.row]
+        stream.told_again = as_packets(events, carrier, groups.rows, numbering, first, content)
+
+
+def _parts(groups: Groups, numbering: Numbering, span: slice, meaning: Meaning) -> list[tuple[int, StreamPackets]]:
+    """First row and packets of each stream of a group; strays that belong to no run of numbers are left out."""
     segment, part = numbering.segment[span], numbering.stream[span]
     content = meaning.content_of
     if part[-1] == 0 and segment.min() >= 0:
-        return [_packets(groups, numbering, span, content)]
+        return [(span.start, _packets(groups, numbering, span, content))]
     whole = []
     for one in range(int(part.max()) + 1):
         rows = span.start + np.flatnonzero((part == one) & (segment >= 0))
         if len(rows):
-            whole.append(_packets(groups, numbering, rows, content))
+            whole.append((int(rows[0]), _packets(groups, numbering, rows, content)))
     return whole
 
 

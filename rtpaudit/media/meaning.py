@@ -58,13 +58,14 @@ def meaning_of(
     buffers: Sequence[Octets],
     given: Mapping[int, Encoding],
     offered: Offered | None,
+    copied: Sequence[int] = (),
 ) -> Meaning:
-    """What the payload types of the rows ``span`` mean."""
+    """What the payload types of the rows ``span`` mean, and those that only copies within them have."""
     types = rows.payload_type[span]
     counts = np.bincount(types, minlength=128)
     encodings: dict[int, Encoding] = {}
     basis: dict[int, str] = {}
-    for number in np.flatnonzero(counts).tolist():
+    for number in sorted({*np.flatnonzero(counts).tolist(), *copied}):
         first = span.start + int(np.argmax(types == number)) if offered else 0
         announced = offered(flow, number, int(rows.time_ns[first])) if offered else None
         if number in given:
@@ -112,7 +113,7 @@ def _usual_step(rows: RtpRows, span: slice) -> int:
 def _carries_events(rows: RtpRows, span: slice, number: int, buffers: Sequence[Octets]) -> bool:
     """Whether a dynamic type looks like telephone-event: four octets, a known event, a timestamp that stands still."""
     mine = span.start + np.flatnonzero(rows.payload_type[span] == number)
-    if number < 96 or (rows.length[mine] != 4).any() or (rows.captured[mine] < 1).any():
+    if number < 96 or not len(mine) or (rows.length[mine] != 4).any() or (rows.captured[mine] < 1).any():
         return False
     codes = np.array([buffers[rows.buffer[row]][rows.start[row]] for row in mine[:256]])
     return bool((codes <= HIGHEST_TELEPHONE_EVENT).all())

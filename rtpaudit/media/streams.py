@@ -86,4 +86,8 @@ class Stream:
     match_basis: str = ""
     encodings: Mapping[int, Encoding] = field(default_factory=dict)
     """encoding of every payload type that occurs"""
+    recovered: StreamPackets | None = None
+    """packets that are missing and whose copies came within others (RFC 2198), under their own numbers and times"""
+    told_again: StreamPackets | None = None
+    """all copies of telephone events, under the numbers of the packets that brought them"""
     id: str = ""
