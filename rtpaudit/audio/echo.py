@@ -35,8 +35,8 @@ WHITENING = 0.8
 SPREAD_S = 0.001
 """over which correlation is gathered: an echo path is no single reflection"""
 SIGMA = 35.0
-"""of the correlation at the delay above that at all others. About one part in a hundred passes it without any echo, by as
-much as 195; with one they mostly have hundreds (measured on some twenty voices). So two parts of a call have to agree.
+"""of the correlation at the delay above that at all others. About one part in a hundred passes it without any echo,
+by as much as 195; with one they mostly have hundreds (measured on some twenty voices). So two parts have to agree.
 """
 SHOWN = 0.4
 """share of the parts of the call in which the same delay has to stand out"""
@@ -107,9 +107,8 @@ def echo_of(spoken: Samples, heard: Samples, sampling_rate_hz: int) -> Echo | No
     -----
     Common practice. Seconds of speech are correlated with what comes back within ``LONGEST_S``, both whitened, and the
     squares added up over a part of the call; the echo is a delay that stands out from all others. Its loss is the part
-    of the spectrum of ``heard`` that follows that of ``spoken`` at this delay; on made echoes it comes out about 1 dB too
-    large, and up to 3 dB off. Speech over speech, music both ways and
-    silence give none.
+    of the spectrum of ``heard`` that follows that of ``spoken`` at this delay; on made echoes it comes out about 1 dB
+    too large, and up to 3 dB off. Speech over speech, music both ways and silence give none.
     """
     starts = _segments(spoken, heard, sampling_rate_hz)
     if len(starts) < LEAST_SEGMENTS:
