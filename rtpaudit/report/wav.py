@@ -35,6 +35,9 @@ class AudioSource(Protocol):
     def both(self, call: AssessedCall, /) -> Sound:
         """Both sides of a call as heard, on the capture's clock."""
 
+    def origin_ns(self, stream_id: str, /) -> int:
+        """Capture time of a stream's first sample."""
+
 
 def write_wav(path: Path, samples: Samples, rate_hz: int) -> None:
     """Write 16-bit PCM; the file is there whole or not at all.
@@ -79,10 +82,11 @@ def write_audio(
     calls: Sequence[AssessedCall],
     source: AudioSource,
     progress: Callable[[int, int], None] | None = None,
+    look_at: Callable[[str, Samples, int], None] | None = None,
 ) -> tuple[int, list[str]]:
     """Write the sound of all calls, call by call: number of files, and a caution for each reason to leave some out.
 
-    Names are made of ids alone, never of anything that stands in a capture.
+    Names are made of ids alone, never of anything that stands in a capture. ``look_at`` is shown each stream as heard.
     """
     left_out: dict[str, list[str]] = {}
     files = 0
@@ -90,7 +94,10 @@ def write_audio(
         sounding = [one.id for one in call.streams if not _silent(one.id, source, left_out)]
         for stream in sounding:
             write_wav(folder / f"{call.id}-{stream}-sent.wav", *source.sent(stream))
-            write_wav(folder / f"{call.id}-{stream}-heard.wav", *source.heard(stream))
+            heard = source.heard(stream)
+            write_wav(folder / f"{call.id}-{stream}-heard.wav", *heard)
+            if look_at:
+                look_at(stream, *heard)
         if sounding:
             write_wav(folder / f"{call.id}.wav", *source.both(call))
             files += 2 * len(sounding) + 1

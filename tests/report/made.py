@@ -180,6 +180,9 @@ class Tones:
         samples, rate = self.sent(stream_id)
         return -samples, rate
 
+    def origin_ns(self, stream_id: str) -> int:
+        return BEGIN_NS + int(stream_id[1:]) * SECOND
+
     def both(self, call: AssessedCall) -> Sound:
         return np.tile(np.array([[1, 2]], np.int16), (80, 1)), 8000
 
