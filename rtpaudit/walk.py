@@ -2,6 +2,7 @@
 
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, replace
+from datetime import tzinfo
 from functools import cached_property
 from itertools import islice
 from pathlib import Path
@@ -121,11 +122,19 @@ class Audit:
             raise UnusableArguments(f"there is no stream {stream!r}")
         return (self.sound.heard(stream) if heard else self.sound.sent(stream))[0]
 
-    def write(self, folder: str | Path, *, audio: bool = True, private: bool = False) -> None:
+    def write(
+        self,
+        folder: str | Path,
+        *,
+        audio: bool = True,
+        private: bool = False,
+        single_file: bool = False,
+        zone: tzinfo | None = None,
+    ) -> None:
         """Write the report folder; UnusableOutput where it cannot be, or is not ours to replace."""
         from rtpaudit.report.folder import write_folder
 
-        write_folder(self, Path(folder), audio=audio, private=private)
+        write_folder(self, Path(folder), audio=audio, private=private, single_file=single_file, zone=zone)
 
     def excerpt(self, path: str | Path) -> list[Path]:
         """Write the packets of these calls, all legs of each conversation, as pcapng; the files that were written.

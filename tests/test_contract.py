@@ -16,7 +16,7 @@ from tests.report import made
 COMMANDS = {"triage", "demo", "explain"}
 TRIAGE_OPTIONS = {
     "--out", "--payload-type", "--delay", "--profile", "--zone", "--private", "--digits", "--quiet", "--json",
-    "--fail-below", "--party", "--at", "--call", "--near", "--excerpt",
+    "--fail-below", "--party", "--at", "--call", "--near", "--excerpt", "--single-file",
 }  # fmt: skip
 
 COLUMNS = {
@@ -122,7 +122,7 @@ def test_the_folder_holds_the_files_promised(tmp_path: Path) -> None:
     write_folder(made.Audited(), tmp_path / "out")
     files = {str(path.relative_to(tmp_path / "out")) for path in (tmp_path / "out").rglob("*") if path.is_file()}
     tables = ["calls", "streams", "gaps", "windows", "findings", "signalling", "events", "reports", "damage"]
-    promised = {f"{table}.{kind}" for table in tables for kind in ("csv", "parquet")} | {"audit.json"}
+    promised = {f"{table}.{kind}" for table in tables for kind in ("csv", "parquet")} | {"audit.json", "index.html"}
     sound = {"audio/c01.wav", "audio/c01-s01-sent.wav", "audio/c01-s02-sent.wav", "audio/c01-s01-heard.wav"}
     assert promised <= files
     assert sound <= files

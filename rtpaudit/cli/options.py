@@ -34,6 +34,9 @@ Near = Annotated[
 ]
 Private = Annotated[bool, typer.Option("--private", help="Pseudonyms for parties and addresses, no digits, no sound.")]
 Digits = Annotated[bool, typer.Option("--digits", help="Show the digits dialled within calls; masked by x otherwise.")]
+SingleFile = Annotated[
+    bool, typer.Option("--single-file", help="Put all calls and their sound into index.html, to pass it on alone.")
+]
 Quiet = Annotated[bool, typer.Option("--quiet", help="No summary and no progress.")]
 Json = Annotated[bool, typer.Option("--json", help="The summary on standard output as JSON, and nothing else.")]
 FailBelow = Annotated[

@@ -1,6 +1,7 @@
 """One complaint: which call is bad, which way and how bad."""
 
 from collections.abc import Sequence
+from datetime import tzinfo
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -32,6 +33,7 @@ def triage(
     near: options.Near = None,
     excerpt: narrowing.Excerpt = None,
     private: options.Private = False,
+    single_file: options.SingleFile = False,
     digits: options.Digits = False,
     quiet: options.Quiet = False,
     json: options.Json = False,
@@ -57,7 +59,7 @@ def triage(
         except NothingChosen as fault:
             raise narrowing.nothing_chosen(fault, where, private) from fault
         passed_on = [] if excerpt is None else audit.excerpt(excerpt)
-        written = _write(audit, folder, private, bar)
+        written = _write(audit, folder, private, single_file, where, bar)
     broken = _below(written, limit)
 
     from rtpaudit.cli.summary import as_json, as_text
@@ -101,10 +103,10 @@ def _audit(
     )
 
 
-def _write(audit: "Audit", folder: Path, private: bool, bar: Bar) -> "Written":
+def _write(audit: "Audit", folder: Path, private: bool, single_file: bool, zone: tzinfo | None, bar: Bar) -> "Written":
     from rtpaudit.report.folder import write_folder
 
-    return write_folder(audit, folder, private=private, progress=bar.writing)
+    return write_folder(audit, folder, private=private, single_file=single_file, zone=zone, progress=bar.writing)
 
 
 def _below(written: "Written", limit: float | None) -> dict[str, float]:

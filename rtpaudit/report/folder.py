@@ -7,6 +7,7 @@ import shutil
 from collections.abc import Callable, Iterable, Iterator, Mapping
 from contextlib import contextmanager
 from dataclasses import dataclass
+from datetime import tzinfo
 from itertools import count
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, Protocol
@@ -14,10 +15,15 @@ from typing import TYPE_CHECKING, Any, Protocol
 from rtpaudit.assess.results import Assessment
 from rtpaudit.errors import UnusableOutput
 from rtpaudit.profile import Profile
+from rtpaudit.report.clock import Clock
 from rtpaudit.report.document import OPENING, document, profile_of
+from rtpaudit.report.page import Shown, write_page
+from rtpaudit.report.plots import detail_for
 from rtpaudit.report.privacy import Pseudonyms, new_key
 from rtpaudit.report.rows import csv_lines
+from rtpaudit.report.sounds import Place, Sounds
 from rtpaudit.report.wav import AudioSource, write_audio
+from rtpaudit.report.waveform import Waveforms
 
 if TYPE_CHECKING:
     from pandas import DataFrame
@@ -28,6 +34,17 @@ CAUTION = (
     "needed. Sound from a capture can be loud without warning: start quietly."
 )
 NOT_OURS = "is there and was not written by rtpaudit; choose another --out, or move it away"
+
+
+@dataclass(frozen=True, slots=True)
+class Mark:
+    """By what a folder of ours is known: a file in it, and how that begins."""
+
+    file: str
+    opening: bytes
+
+
+REPORT = Mark("audit.json", OPENING)
 
 
 class Audited(Protocol):
@@ -68,9 +85,26 @@ def write_folder(
     *,
     audio: bool = True,
     private: bool = False,
+    single_file: bool = False,
+    zone: tzinfo | None = None,
     progress: Callable[[int, int], None] | None = None,
 ) -> Written:
     """Write the report of an audit in place of one that stands there, or not at all.
+
+    Parameters
+    ----------
+    audit : Audited
+    folder : Path
+    audio : bool
+        Whether sound is written.
+    private : bool
+        Pseudonyms, and no sound.
+    single_file : bool
+        Whether the page holds every call and its sound itself.
+    zone : tzinfo, optional
+        In which the page shows times; the machine's own where left out.
+    progress : callable, optional
+        Told how many calls' sound is written, of how many.
 
     Raises
     ------
@@ -81,24 +115,30 @@ def write_folder(
     if private:
         names = Pseudonyms(new_key(), captures)
         tables, captures = names.tables(tables), [names.file(name) for name in captures]
-    cautions, audio_files = [CAUTION], 0
+    calls, cautions, audio_files = audit.assessment.calls, [CAUTION], 0
+    waveforms = Waveforms(audit.sound.heard, detail_for(len(calls)).envelope)
+    place: Place = "nowhere" if private or not audio else "inside" if single_file else "folder"
     with new_folder(folder) as partial:
-        if audio and not private:
+        if place != "nowhere":
             (partial / "audio").mkdir()
-            audio_files, left_out = write_audio(partial / "audio", audit.assessment.calls, audit.sound, progress)
+            audio_files, left_out = write_audio(partial / "audio", calls, audit.sound, progress, waveforms.take)
             cautions += left_out
         for name, frame in tables.items():
             _write(partial / f"{name}.csv", csv_lines(name, frame))
             _write_parquet(partial / f"{name}.parquet", frame)
         _write(partial / "audit.json", document(tables, captures, profile_of(audit.profile, private), cautions))
+        sounds = Sounds(audit.sound, waveforms, place)
+        write_page(
+            partial, Shown(tables, calls, captures, sounds, Clock(zone), audit.profile.playout, cautions, single_file)
+        )
     return Written(folder, tables, captures, audio_files, cautions)
 
 
-def refuse_foreign(folder: Path) -> None:
-    """Refuse a place where anything stands that rtpaudit did not write."""
+def refuse_foreign(folder: Path, mark: Mark = REPORT) -> None:
+    """Refuse a place where anything stands that rtpaudit did not write, or wrote as something else."""
     try:
-        with open(folder / "audit.json", "rb") as file:
-            ours = file.read(len(OPENING)) == OPENING
+        with open(folder / mark.file, "rb") as file:
+            ours = file.read(len(mark.opening)) == mark.opening
     except OSError:
         ours = not folder.exists() and not folder.is_symlink()
     if not ours:
@@ -106,24 +146,24 @@ def refuse_foreign(folder: Path) -> None:
 
 
 @contextmanager
-def new_folder(folder: Path) -> Iterator[Path]:
+def new_folder(folder: Path, mark: Mark = REPORT) -> Iterator[Path]:
     """A folder to fill, which takes the place of ``folder`` once all went well, and else disappears."""
-    refuse_foreign(folder)
+    refuse_foreign(folder, mark)
     place = folder.resolve()
     partial = _beside(place, "partial")
     try:
         partial.mkdir(parents=True)
         yield partial
-        _put(partial, place)
+        _put(partial, place, mark)
     except OSError as fault:
         raise UnusableOutput(f"{folder}: cannot be written: {fault.strerror or fault}; choose another --out") from fault
     finally:
         shutil.rmtree(partial, ignore_errors=True)
 
 
-def _put(partial: Path, place: Path) -> None:
+def _put(partial: Path, place: Path, mark: Mark) -> None:
     """Rename ``partial`` to ``place``; what stood there comes back where that fails."""
-    refuse_foreign(place)
+    refuse_foreign(place, mark)
     if not place.exists():
         partial.rename(place)
         return

@@ -32,7 +32,9 @@ def test_it_holds_each_table_twice_the_document_and_the_sound(tmp_path: Path) ->
     sound = {"c01.wav", "c02.wav"}
     for stream in ("c01-s01", "c01-s02", "c02-s03", "c02-s04"):
         sound |= {f"{stream}-sent.wav", f"{stream}-heard.wav"}
-    assert set(everything(tmp_path / "out")) == tables | {"audit.json"} | {f"audio/{name}" for name in sound}
+    assert set(everything(tmp_path / "out")) == tables | {"audit.json", "index.html"} | {
+        f"audio/{name}" for name in sound
+    }
     assert written.audio_files == 10
 
 
