@@ -16,6 +16,12 @@ LEAST_PACKETS = 3
 """Two steps of one are RFC 3550's MIN_SEQUENTIAL twice over; with two packets alone, chance and habit fake it."""
 SURE_PACKETS = 10
 FORWARD_STEP = 100
+BLOCK_PACKETS = 8
+BLOCK_NS = 100_000_000
+SLOWEST_HZ, FASTEST_HZ = 2_000, 400_000
+"""Media clocks are of 8 to 90 kHz (RFC 3551). Beyond these lie counters of ticks, milliseconds and microseconds;
+between them is room for timestamps that step wrong by a few times."""
+FEWEST_BLOCKS = 4
 _UNASSIGNED = np.zeros(128, np.bool_)
 # RFC 3551, tables 4 and 5: never given out, or reserved so as not to be taken for RTCP.
 _UNASSIGNED[[1, 2, 19, 20, 21, 22, 23, 24, 27, 29, 30]] = True
@@ -41,12 +47,16 @@ class Survey:
     """packets of that payload type"""
     short: NDArray[np.int64]
     """packets of 4 octets or fewer of payload: events"""
+    timed: NDArray[np.int64]
+    """blocks of packets over some time whose timestamps moved"""
+    paced: NDArray[np.int64]
+    """of these, where they moved as fast as some media clock"""
 
 
 def survey(groups: Groups) -> Survey:
     """Counts that decide whether each group is RTP."""
     rows = groups.rows
-    counts = _survey(rows.sequence, rows.timestamp, rows.payload_type, rows.length, groups.bounds)
+    counts = _survey(rows.sequence, rows.timestamp, rows.payload_type, rows.length, rows.time_ns, groups.bounds)
     return Survey(np.diff(groups.bounds), *counts)
 
 
@@ -71,7 +81,9 @@ def is_rtp(found: Survey) -> NDArray[np.bool_]:
     odd = _UNASSIGNED[found.payload_type] & ((found.packets < 2 * SURE_PACKETS) | (found.sequential * 2 < steps))
     # Payload types may change in mid-call, but not with every packet.
     settled = found.agreeing * 4 >= found.packets
-    return (few | many) & (moving | events) & settled & ~odd
+    # A jump of the timestamp spoils one block, a delayed copy of all some; a clock that is no media clock every one.
+    paced = (found.timed < FEWEST_BLOCKS) | (found.paced * 4 >= found.timed)
+    return (few | many) & (moving & paced | events) & settled & ~odd
 
 
 @kernel
@@ -80,8 +92,11 @@ def _survey(
     timestamp: NDArray[np.uint32],
     payload_type: NDArray[np.uint8],
     length: NDArray[np.int32],
+    time_ns: NDArray[np.int64],
     bounds: NDArray[np.int64],
 ) -> tuple[
+    NDArray[np.int64],
+    NDArray[np.int64],
     NDArray[np.int64],
     NDArray[np.int64],
     NDArray[np.int64],
@@ -94,11 +109,12 @@ def _survey(
     copies, sequential = np.zeros(groups, np.int64), np.zeros(groups, np.int64)
     forward, ticking = np.zeros(groups, np.int64), np.zeros(groups, np.int64)
     common, agreeing = np.zeros(groups, np.int64), np.zeros(groups, np.int64)
-    short = np.zeros(groups, np.int64)
+    short, timed, paced = np.zeros(groups, np.int64), np.zeros(groups, np.int64), np.zeros(groups, np.int64)
     seen = np.zeros(128, np.int64)
     for g in range(groups):
         first, last = bounds[g], bounds[g + 1]
         seen[:] = 0
+        block = first
         for i in range(first, last):
             seen[payload_type[i]] += 1
             if length[i] <= 4:
@@ -113,6 +129,12 @@ def _survey(
                 forward[g] += 1
                 ticking[g] += moved > 0
                 sequential[g] += step == 1
+            passed = time_ns[i] - time_ns[block]
+            if i - block >= BLOCK_PACKETS and passed >= BLOCK_NS:
+                moved = (np.int64(timestamp[i]) - np.int64(timestamp[block])) & 0xFFFFFFFF
+                timed[g] += moved > 0
+                paced[g] += moved > 0 and SLOWEST_HZ <= moved * 1e9 / passed <= FASTEST_HZ
+                block = i
         common[g] = seen.argmax()
         agreeing[g] = seen[common[g]]
-    return copies, sequential, forward, ticking, common, agreeing, short
+    return copies, sequential, forward, ticking, common, agreeing, short, timed, paced

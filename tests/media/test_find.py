@@ -3,6 +3,7 @@
 import random
 
 import numpy as np
+import pytest
 
 from rtpaudit.media.calls import pair_streams
 from rtpaudit.media.streams import Content
@@ -39,6 +40,25 @@ def test_a_counter_under_a_fixed_header_is_no_stream():
     for turn in range(200):
         made.add(5.0 * turn, b"\x80\x01" + turn.to_bytes(2, "big") + bytes(8) + b"state of the game")
     assert made.streams() == []
+
+
+@pytest.mark.parametrize("ticks_per_s", [1, 60, 1000, 1_000_000])
+@pytest.mark.parametrize("payload_type", [0, 5, 35, 111])
+def test_a_counter_beside_a_clock_that_is_no_media_clock_is_no_stream(ticks_per_s, payload_type):
+    made = Datagrams()
+    for turn in range(600):
+        made.add(16.0 * turn, rtp(bytes(40), turn, 16 * turn * ticks_per_s // 1000, payload_type=payload_type))
+    assert made.streams() == []
+
+
+@pytest.mark.parametrize("factor", [0.5, 2])
+def test_a_timestamp_that_counts_at_half_or_twice_the_rate_is_still_a_stream(factor):
+    assert len(talk(range(600), step=round(160 * factor)).streams()) == 1
+
+
+def test_a_timestamp_that_jumps_by_hours_is_still_a_stream():
+    made = joined(talk(range(60)), talk(range(60, 120), start_ms=1200.0, first_ticks=400_000_000))
+    assert [len(one.packets) for one in made.streams()] == [120]
 
 
 def test_a_third_lost_at_random_is_still_a_stream():
