@@ -13,7 +13,7 @@ from rtpaudit.columns import TABLES
 from rtpaudit.report.folder import write_folder
 from tests.report import made
 
-COMMANDS = {"triage", "demo", "explain"}
+COMMANDS = {"triage", "nightly", "demo", "explain"}
 TRIAGE_OPTIONS = {
     "--out", "--payload-type", "--delay", "--profile", "--zone", "--private", "--digits", "--quiet", "--json",
     "--fail-below", "--party", "--at", "--call", "--near", "--excerpt", "--single-file",

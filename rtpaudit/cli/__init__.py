@@ -9,7 +9,7 @@ from typing import Annotated, Any
 import typer
 
 from rtpaudit import __version__
-from rtpaudit.cli import demo, explain, triage
+from rtpaudit.cli import demo, explain, nightly, triage
 from rtpaudit.cli.start import start
 from rtpaudit.cli.terminal import complain, say
 from rtpaudit.errors import RtpAuditError
@@ -27,6 +27,7 @@ app = typer.Typer(
     pretty_exceptions_enable=False,
 )
 app.command("triage")(triage.triage)
+app.command("nightly")(nightly.nightly)
 app.command("demo")(demo.demo)
 app.command("explain")(explain.explain)
 

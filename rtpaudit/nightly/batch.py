@@ -56,6 +56,8 @@ class Run:
     _todo: deque[Task] = field(default_factory=deque)
     _again: deque[Piece] = field(default_factory=deque)
     _rows: Rows = field(default_factory=Rows)
+    at: dict[str, Found] = field(default_factory=dict)
+    """where the captures of this run lie"""
     _numbers: int = 0
     _at_work: int = 0
     _committed: float = field(default_factory=time.monotonic)
@@ -123,6 +125,7 @@ class Run:
                 self._count(one.task, left=1)
             else:
                 entries.append(entry_of(one, self.settings))
+                self.at[one.capture] = one.task.found
                 self._count(one.task, failed=one.status == FAILED, known=one.status == KNOWN)
         self._rows.add(entries, outcome.result.tables)
         if "calls" in outcome.result.tables:

@@ -54,12 +54,12 @@ def lot_of(octets: bytes, size: int, seed: int) -> int:
     return int.from_bytes(digest.digest(), "big")
 
 
-def profile_mark(profile: Profile, given: "Mapping[int, Encoding]", delay_ms: float | None) -> str:
+def profile_mark(profile: Profile, given: "Mapping[int, Encoding]", delay_ms: float | None, sound: bool) -> str:
     """Eight letters for all settings that change figures; routes and clips change none."""
     values = asdict(profile)
     for without in ("routes", "listening"):
         del values[without]
-    told = repr((_sorted(values), sorted((number, str(one)) for number, one in given.items()), delay_ms))
+    told = repr((_sorted(values), sorted((number, str(one)) for number, one in given.items()), delay_ms, sound))
     return hashlib.blake2b(told.encode(), digest_size=4).hexdigest()
 
 

@@ -7,7 +7,7 @@ is written; the batch that it was to name is done again.
 import json
 import os
 import zlib
-from collections.abc import Mapping, Sequence
+from collections.abc import Mapping
 from dataclasses import asdict, dataclass, field
 from pathlib import Path
 from typing import Any
@@ -179,8 +179,3 @@ def _parse(line: bytes) -> Batch | None:
         return Batch(value["id"], value["committed"], tuple(value["files"]), entries, tuple(value["draws"]))
     except (ValueError, KeyError, TypeError):
         return None
-
-
-def files_of(batches: Sequence[Batch]) -> list[str]:
-    """Files of several batches."""
-    return [name for batch in batches for name in batch.files]

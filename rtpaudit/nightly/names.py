@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import re
-from collections.abc import Callable, Iterable, Mapping
+from collections.abc import Callable, Iterable, Mapping, Sequence
 from ipaddress import ip_address
 from typing import TYPE_CHECKING
 
@@ -39,7 +39,22 @@ def hide_names(tables: Mapping[str, DataFrame], names: str, key: bytes, digits: 
     return hidden
 
 
-def _key(tables: dict[str, DataFrame], pseudonyms: Pseudonyms) -> None:
+def hide_in_report(
+    tables: Mapping[str, DataFrame], captures: Sequence[str], names: str, key: bytes
+) -> tuple[dict[str, DataFrame], list[str]]:
+    """Tables and captures' names of one report, with the same pseudonyms as the store has."""
+    if names == NAMES_KEPT:
+        return dict(tables), list(captures)
+    pseudonyms = Pseudonyms(key, captures)
+    if names == PRIVATE:
+        return pseudonyms.tables(tables), [pseudonyms.file(name) for name in captures]
+    hidden = {name: frame.copy(deep=False) for name, frame in tables.items()}
+    told = _key(hidden, pseudonyms)
+    return hidden, [told(name) for name in captures]
+
+
+def _key(tables: dict[str, DataFrame], pseudonyms: Pseudonyms) -> Callable[[str], str]:
+    """Put pseudonyms in place of parties and Call-IDs; what does the same for a sentence."""
     parties = _cells(tables, "calls", "caller") | _cells(tables, "calls", "callee")
     stand_in = {name: pseudonyms.party(name) for name in parties if not _is_address(name)}
     dialogs = _cells(tables, "calls", "call_id") | _cells(tables, "signalling", "call_id")
@@ -56,6 +71,7 @@ def _key(tables: dict[str, DataFrame], pseudonyms: Pseudonyms) -> None:
             frame[column] = _mapped(frame[column], told)
     line = tables["signalling"]["line"]
     tables["signalling"]["line"] = line.mask(line.notna())
+    return told
 
 
 def _cells(tables: Mapping[str, DataFrame], table: str, column: str) -> set[str]:

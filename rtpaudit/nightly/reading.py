@@ -1,6 +1,6 @@
 """A night read back from the store: calls with what they stand for, their streams, findings and captures."""
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
 from datetime import date
 from typing import TYPE_CHECKING, Any
@@ -70,6 +70,15 @@ def read_night(store: Store, night: date) -> Night:
     return Night(night, captures, calls, streams, findings.reset_index(drop=True), populations)
 
 
+def kinds_in(store: Store, nights: Iterable[date]) -> list[str]:
+    """Kinds of findings that any of the nights has, remarks left out."""
+    kinds: set[str] = set()
+    for night in nights:
+        findings = _read(store, "findings", night)
+        kinds |= set(findings.loc[findings["severity"] != REMARK, "finding"].dropna().unique())
+    return sorted(kinds)
+
+
 def _read(store: Store, table: str, night: date) -> "DataFrame":
     import pyarrow as pa
     from pyarrow import parquet
@@ -108,8 +117,3 @@ def _weights(calls: "DataFrame", captures: "DataFrame", populations: Mapping[str
     each = {name: populations[name] / count for name, count in audited.items() if name in populations}
     stratum = dict(zip(captures["capture_id"], captures["stratum"], strict=True))
     return np.array([each.get(stratum.get(one), 1.0) for one in calls["capture_id"]], np.float64)
-
-
-def read_nights(store: Store, nights: Sequence[date]) -> list[Night]:
-    """Several nights, in their order."""
-    return [read_night(store, night) for night in nights]

@@ -23,6 +23,8 @@ class AuditSettings:
     """IANA name; the machine's own where left out"""
     names: str = NAMES_KEYED
     """``kept``, ``keyed`` (parties are pseudonyms) or ``private`` (addresses too)"""
+    sound: bool = False
+    """whether the sound is decoded and measured too, which takes ten times as long"""
     digits: bool = False
     """whether pressed digits are kept"""
     key: bytes = field(default=b"", repr=False)

@@ -12,7 +12,7 @@ from typing import TYPE_CHECKING
 
 from rtpaudit import __version__
 from rtpaudit.capture.damage import printable
-from rtpaudit.errors import RtpAuditError
+from rtpaudit.errors import RtpAuditError, UnreadableCapture
 from rtpaudit.nightly.identity import content_of, unread
 from rtpaudit.nightly.journal import DONE, FAILED, KNOWN
 from rtpaudit.nightly.rows import Facts, PieceRows
@@ -85,9 +85,9 @@ def failed(task: Task, reason: str, settings: AuditSettings, zone: tzinfo | None
     """Result for a capture that no worker came through with."""
     rows = PieceRows(settings, zone)
     try:
-        with _at_hand(task.found) as path:
+        with at_hand(task.found) as path:
             capture = content_of(path)
-    except OSError:
+    except (OSError, RtpAuditError):
         capture = unread(task.found)
     rows.add(_facts(task, capture, FAILED, reason, time.monotonic()), None)
     return Result([Examined(task, FAILED, capture, reason)], rows.finish())
@@ -98,7 +98,7 @@ def _examine(task: Task, rows: PieceRows, settings: AuditSettings, last: bool) -
 
     begun, capture, path = time.monotonic(), unread(task.found), ""
     try:
-        with _at_hand(task.found) as path:
+        with at_hand(task.found) as path:
             capture = content_of(path)
             if capture in task.known or rows.holds(capture):
                 return Examined(task, KNOWN, capture)
@@ -108,6 +108,7 @@ def _examine(task: Task, rows: PieceRows, settings: AuditSettings, last: bool) -
                 payload_types=settings.payload_types,
                 delay_ms=settings.delay_ms,
                 digits=settings.digits,
+                sound=settings.sound,
             )
             found.tables  # noqa: B018  built here, where a fault is this capture's own
             if look_again(task.found) != task.found:
@@ -132,7 +133,7 @@ def _examine(task: Task, rows: PieceRows, settings: AuditSettings, last: bool) -
 
 
 @contextmanager
-def _at_hand(found: Found) -> Iterator[str]:
+def at_hand(found: Found) -> Iterator[str]:
     """Path of a capture on this machine, fetched for the time being where it lies elsewhere."""
     if not found.remote:
         yield found.address
@@ -142,11 +143,9 @@ def _at_hand(found: Found) -> Iterator[str]:
         path = os.path.join(folder, Path(found.name).name or "capture")
         try:
             system.get_file(found.path, path)
-        except OSError:
-            raise
         # Each file system has errors of its own; there is no list of them.
         except Exception as fault:
-            raise OSError(f"cannot be fetched ({type(fault).__name__}: {fault})") from fault
+            raise UnreadableCapture(f"cannot be fetched ({type(fault).__name__}: {fault})") from fault
         yield path
 
 
