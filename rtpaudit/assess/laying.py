@@ -8,13 +8,14 @@ import numpy as np
 from numpy.typing import NDArray
 
 from rtpaudit.assess.media_time import common_ticks
-from rtpaudit.assess.playback import packet_ticks
+from rtpaudit.assess.playback import channels_of, packet_ticks
 from rtpaudit.assess.restored import before_in_sequence
 from rtpaudit.capture.frames import Octets
 from rtpaudit.codecs import codec_of, decode, sample_table
 from rtpaudit.errors import MissingCodec
 from rtpaudit.media.streams import Content, Stream, StreamPackets
 from rtpaudit.playout.timeline import gather, lay, lay_by_table, positions, span
+from rtpaudit.signalling.payload_types import Encoding
 from rtpaudit.units import NS_PER_S
 
 Samples = NDArray[np.int16]
@@ -103,8 +104,8 @@ def sent_samples(stream: Stream, laid: Laid, buffers: Sequence[Octets]) -> Sampl
     for number in np.flatnonzero(np.bincount(types, minlength=128)).tolist():
         for octets in np.unique(buffer).tolist():
             mine = (types == number) & (buffer == octets)
-            name = stream.encodings[number].name
-            _lay_onto(timeline, name, start[mine], length[mine], place[mine], buffers[octets])
+            encoding = stream.encodings[number]
+            _lay_onto(timeline, encoding, start[mine], length[mine], place[mine], buffers[octets])
     return timeline
 
 
@@ -115,20 +116,31 @@ def _pieces(packets: StreamPackets, rows: NDArray[np.int64], position: NDArray[n
 
 def _lay_onto(
     timeline: Samples,
-    encoding: str,
+    encoding: Encoding,
     start: NDArray[np.int64],
     length: NDArray[np.int32],
     place: NDArray[np.int64],
     octets: Octets,
 ) -> None:
-    table = sample_table(encoding)
-    if table is not None:
+    table, channels = sample_table(encoding.name), channels_of(encoding)
+    if table is not None and channels == 1:
         lay_by_table(table, octets, start, length, place, len(timeline), onto=timeline)
         return
     # Decoders that remember the past need the order of media time.
     order = np.argsort(place, kind="stable")
     payloads, offsets = gather(octets, start[order], length[order])
-    samples, ends = decode(encoding, payloads, offsets)
+    samples, ends = decode(encoding.name, payloads, offsets)
+    if channels > 1:
+        samples, ends = _mixed(samples, ends, channels)
     laid = lay(samples, ends, place[order], len(timeline))
     held = laid != 0
     timeline[held] = laid[held]
+
+
+def _mixed(samples: Samples, ends: NDArray[np.int64], channels: int) -> tuple[Samples, NDArray[np.int64]]:
+    """The mean of all channels; what is left of an instant at the end of a packet goes."""
+    instants = np.diff(ends) // channels
+    within = np.arange(len(samples)) - np.repeat(ends[:-1], np.diff(ends))
+    whole = within < np.repeat(instants * channels, np.diff(ends))
+    mean = samples[whole].reshape(-1, channels).mean(axis=1, dtype=np.float64)
+    return np.rint(mean).astype(np.int16), np.concatenate([np.zeros(1, np.int64), np.cumsum(instants)])

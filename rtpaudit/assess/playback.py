@@ -16,7 +16,11 @@ from rtpaudit.metrics.windows import window_of
 from rtpaudit.playout.buffer import Played, play, talkspurts
 from rtpaudit.playout.what_if import WhatIf, what_if
 from rtpaudit.profile import Playout
+from rtpaudit.signalling.payload_types import Encoding
 from rtpaudit.units import MS_PER_S, percent
+
+INTERLEAVED = ("PCMU", "PCMA", "L8", "L16")
+"""encodings whose channels alternate sample by sample (RFC 3551, 4.1)"""
 
 
 @dataclass(frozen=True, slots=True)
@@ -136,6 +140,11 @@ def is_audio(stream: Stream) -> NDArray[np.bool_]:
     return np.asarray((content == Content.AUDIO) | (content == Content.REDUNDANT))
 
 
+def channels_of(encoding: Encoding) -> int:
+    """Samples of one instant that lie side by side in a payload."""
+    return encoding.channels if encoding.name in INTERLEAVED else 1
+
+
 def packet_ticks(stream: Stream, packets: StreamPackets | None = None) -> NDArray[np.int64]:
     """Media time that each packet carries, by its length where that tells, else that of most packets.
 
@@ -148,6 +157,6 @@ def packet_ticks(stream: Stream, packets: StreamPackets | None = None) -> NDArra
         codec = CODECS.get(encoding.name)
         if codec is not None and codec.octets_per_block and not stream.encrypted:
             mine = packets.payload_type == number
-            samples = packets.length[mine] // codec.octets_per_block * codec.samples_per_block
+            samples = packets.length[mine] // codec.octets_per_block * codec.samples_per_block // channels_of(encoding)
             ticks[mine] = samples * stream.clock_rate_hz // codec.sampling_rate(encoding.clock_rate_hz)
     return ticks
