@@ -33,10 +33,14 @@ def as_text(
     written: Written, assessment: Assessment, passed_on: Sequence[Path], zone: tzinfo | None, columns: int
 ) -> str:
     """The summary for people, at most ``columns`` wide where words allow."""
-    calls = worst_first(written.tables["calls"])
+    findings = written.tables["findings"]
+    calls = worst_first(written.tables["calls"], findings)
     streams = written.tables["streams"].set_index("stream")
     sides = {one.id: (one.from_callee, one.from_caller) for one in assessment.calls}
-    blocks = [_call(call, sides[call.call], streams, zone, columns) for _, call in calls[:LISTED_CALLS].iterrows()]
+    blocks = [
+        _call(call, findings[findings.call == call.call], sides[call.call], streams, zone, columns)
+        for _, call in calls[:LISTED_CALLS].iterrows()
+    ]
     notes = [
         *_rest(calls[LISTED_CALLS:]),
         *_notes(written, streams),
@@ -70,14 +74,20 @@ def as_json(
         "below": list(broken),
         "cautions": written.cautions,
     }
-    for name, frame in (("calls", worst_first(tables["calls"])), ("damage", tables["damage"])):
+    listed = worst_first(tables["calls"], tables["findings"])
+    for name, frame in (("calls", listed), ("findings", tables["findings"]), ("damage", tables["damage"])):
         head[name] = json.loads(b"[" + b"".join(json_lines(name, frame)) + b"]")
     return json.dumps(head, indent=1, allow_nan=False)
 
 
-def worst_first(calls: DataFrame) -> DataFrame:
-    """Calls by the rating of their worse direction; those without one behind, by loss."""
-    return calls.sort_values(["r_factor", "loss_pct"], ascending=[True, False], kind="stable", na_position="last")
+def worst_first(calls: DataFrame, findings: DataFrame) -> DataFrame:
+    """Calls with faults first, then those with concerns; among them by the worse rating, then by loss."""
+    told = findings[findings.call.notna()]
+    gravity = told.severity.map({"remark": 0, "concern": 1, "fault": 2}).groupby(told.call).max()
+    ranked = calls.assign(_gravity=calls.call.map(gravity).fillna(0).astype(int))
+    order = ["_gravity", "r_factor", "loss_pct"]
+    ranked = ranked.sort_values(order, ascending=[False, True, False], kind="stable", na_position="last")
+    return ranked.drop(columns="_gravity")
 
 
 def figure(value: float) -> str:
@@ -120,20 +130,54 @@ def _meaning(calls: DataFrame) -> list[str]:
 
 
 def _call(
-    call: Series, sides: Sequence[Sequence[AssessedStream]], streams: DataFrame, zone: tzinfo | None, columns: int
+    call: Series,
+    findings: DataFrame,
+    sides: Sequence[Sequence[AssessedStream]],
+    streams: DataFrame,
+    zone: tzinfo | None,
+    columns: int,
 ) -> str:
+    """One call: who and when, the sentence, the figures behind it, the next step."""
     parties = f"{visible(call.caller)} → {visible(call.callee)}"
     when = f"{_local(call.started, zone):%H:%M:%S}"
-    first = f"{call.call}  {when}  {parties}  {_length(call.duration_s)}  {visible(_or(call.encoding, ''))}".rstrip()
-    lines = [first]
+    fate = "" if call.outcome in ("answered", "media only") else _fate(call)
+    coded = visible(_or(call.encoding, ""))
+    first = [one for one in (call.call, when, parties, _length(call.duration_s), coded, fate) if one]
+    lines = ["  ".join(first), *_sentence(call, findings)]
     reasons: list[str] = []
     for name, side, rating in zip(("caller", "callee"), sides, (call.caller_hears_r, call.callee_hears_r), strict=True):
+        if fate and not call.streams:
+            continue
         reaching = streams.loc[[one.id for one in side]]
         lines.append(f"{INDENT}{name} hears  {_ear(reaching, rating)}")
         reasons += reaching.rating_note[reaching.r_factor.isna()].dropna().tolist()
     lines += [f"{INDENT}not rated: {reason}" for reason in dict.fromkeys(reasons)]
+    lines += _next(call, findings)
     title, *rest = [fill(line, columns, subsequent_indent=INDENT) for line in lines]
     return "\n".join([bold(title), *rest])
+
+
+def _fate(call: Series) -> str:
+    code = str(call.status_code)
+    return f"{call.outcome} {code}" if code.isdigit() else str(call.outcome)
+
+
+def _chief(call: Series, findings: DataFrame) -> Series | None:
+    chief = findings[findings.finding == _or(call.headline, "")]
+    return chief.iloc[0] if len(chief) else None
+
+
+def _sentence(call: Series, findings: DataFrame) -> list[str]:
+    chief = _chief(call, findings)
+    return [] if chief is None else [f"{INDENT}{visible(chief.says)}"]
+
+
+def _next(call: Series, findings: DataFrame) -> list[str]:
+    """What to check, and the names of what else was found."""
+    chief = _chief(call, findings)
+    lines = [] if chief is None else [f"{INDENT}Next: {visible(_or(chief.check_next, ''))}"]
+    others = [name for name in dict.fromkeys(findings.finding) if chief is None or name != chief.finding]
+    return lines + ([f"{INDENT}Also found: {', '.join(others)}."] if others else [])
 
 
 def _ear(streams: DataFrame, rating: float) -> str:

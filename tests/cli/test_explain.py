@@ -6,11 +6,29 @@ import pytest
 
 from rtpaudit.cli import main
 from rtpaudit.columns import TABLES
+from rtpaudit.findings import CATALOGUE
 from tests.cli.conftest import Run
 
 
-def test_without_a_name_every_column_of_every_table_is_listed(capsys: pytest.CaptureFixture[str]) -> None:
+def test_without_a_name_every_finding_is_listed(capsys: pytest.CaptureFixture[str]) -> None:
     assert main(["explain"]) == 0
+    text = capsys.readouterr().out
+    assert CATALOGUE
+    for name in CATALOGUE:
+        assert f"  {name} " in text
+    assert max(map(len, text.splitlines())) <= 120
+
+
+def test_a_finding_has_its_page(capsys: pytest.CaptureFixture[str]) -> None:
+    assert main(["explain", "loss-burst"]) == 0
+    text = " ".join(capsys.readouterr().out.split())
+    rule = CATALOGUE["loss-burst"]
+    for part in (rule.means, rule.measured_as, rule.basis, rule.check_next):
+        assert " ".join(part.split()) in text
+
+
+def test_every_column_of_every_table_can_be_listed(capsys: pytest.CaptureFixture[str]) -> None:
+    assert main(["explain", "columns"]) == 0
     text = capsys.readouterr().out
     for table, columns in TABLES.items():
         assert f"{table}.csv" in text
