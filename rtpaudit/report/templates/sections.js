@@ -28,9 +28,8 @@ function showVerdict(view, slot) {
 
 function ratingWords(ear) {
   if (!ear.streams.length) return ["nothing was captured this way"];
-  return known(ear.r)
-    ? [term(`R ${figure(ear.r)}`, audit.notes.steps.R.note), ` ${ear.band}`]
-    : [`not rated${ear.note ? `: ${ear.note}` : ""}`];
+  if (known(ear.r)) return [term(`R ${figure(ear.r)}`, audit.notes.steps.R.note), ` ${ear.band}`];
+  return [ear.note ? term("not rated", `Not rated: ${ear.note}.`) : "not rated"];
 }
 
 function showFindings(view, slot, tape) {

@@ -1,5 +1,7 @@
 // The tape: the picture of both ears, and over it all that moves: cursor, flags of findings, values under the pointer.
 
+const FLAG_ROOM = 25;
+
 class Tape {
   constructor(view, root, seek) {
     this.view = view;
@@ -77,8 +79,8 @@ class Tape {
         ),
       );
     for (const side of Object.values(SIDES)) {
-      write(side, DELAY + LANES.delay, `${this.picture.scale}`, "tick");
-      write(side, DELAY + LANES.delay / 2, `${this.picture.scale / 2} ms`, "tick");
+      write(side, DELAY + LANES.delay, figure(this.picture.scale), "tick");
+      write(side, DELAY + LANES.delay / 2, `${figure(this.picture.scale / 2)} ms`, "tick");
       write(side, DELAY, "0", "tick");
       write(side, RIBBON + LANES.ribbon / 2, "rating");
       write(side, LOST + LANES.lost / 2, "lost");
@@ -87,7 +89,8 @@ class Tape {
   }
 
   legend() {
-    const late = this.lanes.some(lane => lane.late.length),
+    const speech = this.lanes.some(lane => lane.speech.length),
+      late = this.lanes.some(lane => lane.late.length),
       lost = this.lanes.some(lane => lane.gaps.length);
     const entry = (kind, words, text) =>
       make("li", {}, make("span", {class: `key ${kind}`, "aria-hidden": "true"}), text ? term(words, text) : words);
@@ -97,7 +100,7 @@ class Tape {
       entry("key-deadline", "playout deadline", terms["playout deadline"]),
       ...(late ? [entry("key-late", "too late, discarded", terms["playout deadline"])] : []),
       ...(lost ? [entry("key-lost", "lost", terms.lost)] : []),
-      entry("key-speech", "speech", terms.sound),
+      ...(speech ? [entry("key-speech", "speech", terms.sound)] : []),
       ...(this.picture.events.length ? [make("li", {}, make("b", {"aria-hidden": "true"}, "5 "), "key pressed")] : []),
       ...(this.view.holds.length ? [entry("key-hold", "on hold")] : []),
       ...(this.view.messages.rows.length ? [entry("key-message", "signalling message")] : []),
@@ -252,14 +255,16 @@ class Tape {
   // Puts everything that lies over the figure where the range has moved it.
   place() {
     const {left, width} = this.frame();
-    const taken = {caller: -Infinity, callee: -Infinity};
-    for (const pin of [...this.pins].sort((a, b) => a.t - b.t)) {
-      const x = this.x(pin.t);
-      pin.button.hidden = x < left - 12 || x > left + width + 12;
-      // Flags of one place stand side by side.
-      const free = Math.max(x, taken[pin.ear] + 23);
-      if (!pin.button.hidden) taken[pin.ear] = free;
-      pin.button.style.left = `${Math.min(free, left + width - 4)}px`;
+    for (const ear of Object.keys(SIDES)) {
+      const pins = this.pins.filter(pin => pin.ear === ear).sort((a, b) => a.t - b.t);
+      for (const pin of pins) {
+        pin.x = this.x(pin.t);
+        pin.button.hidden = pin.x < left - 12 || pin.x > left + width + 12;
+      }
+      spread(
+        pins.filter(pin => !pin.button.hidden),
+        left + width - 4,
+      );
     }
     const {start, end} = this.range;
     this.slot("shown").textContent =
@@ -324,6 +329,15 @@ class Tape {
     }
     return told.join(" · ") || "nothing";
   }
+}
+
+// Flags of one place stand side by side, and none beyond the edge.
+function spread(pins, edge) {
+  let free = -Infinity;
+  for (const pin of pins) free = (pin.x = Math.max(pin.x, free)) + FLAG_ROOM;
+  let limit = edge;
+  for (const pin of [...pins].reverse()) limit = (pin.x = Math.min(pin.x, limit)) - FLAG_ROOM;
+  for (const pin of pins) pin.button.style.left = `${pin.x}px`;
 }
 
 function nearest(sorted, t) {
