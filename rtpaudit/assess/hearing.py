@@ -10,6 +10,7 @@ from rtpaudit.assess.playback import is_audio, packet_ticks
 from rtpaudit.audio.clipping import Clipping, clipping_of
 from rtpaudit.audio.digits import Digit, digits_of
 from rtpaudit.audio.encryption import Cipher, CipherVerdict, cipher_of
+from rtpaudit.audio.judged import judged_frames
 from rtpaudit.audio.law import LawVerdict, law_of
 from rtpaudit.audio.level import SpeechLevel, WindowLevels, level_of, noise_level_dbov, window_levels
 from rtpaudit.audio.onsets import Onsets, onsets_of
@@ -156,6 +157,7 @@ def hear(
     level = level_of(scanned)
     spectra, bursts = spectra_of(samples, scanned), tone_bursts(samples, scanned)
     low, high = EXTREMES.get(stream.encoding, LINEAR_EXTREMES)
+    judged = judged_frames(samples, received)
     packet = round(stream.packet_time_ms * rate_hz / 1000.0) if stream.packet_time_ms > 0 else 0
     return StreamSound(
         rate_hz=rate_hz,
@@ -172,8 +174,8 @@ def hear(
         tones=progress_tones(bursts),
         steady_tones=steady_tones(samples, scanned, bursts, stream.encoding),
         law=law_of(samples, rate_hz) if stream.encoding in G711 else None,
-        slips=slips_of(samples, rate_hz, received, packet),
-        splices=splices_of(samples, rate_hz, packet, received) if packet else None,
+        slips=slips_of(samples, rate_hz, received, packet, judged),
+        splices=splices_of(samples, rate_hz, packet, received, judged) if packet else None,
         tandem=tandem_of(samples, stream.encoding),
         onsets=onsets_of(samples, rate_hz, begins, level),
     )

@@ -72,7 +72,11 @@ def slips_per_day(skew_ppm: float) -> float:
 
 
 def slips_of(
-    samples: Samples, sampling_rate_hz: int, received: Mask | None = None, packet_samples: int = 0
+    samples: Samples,
+    sampling_rate_hz: int,
+    received: Mask | None = None,
+    packet_samples: int = 0,
+    judged: Judged | None = None,
 ) -> Slips | None:
     """Slips in the sound of one stream.
 
@@ -86,6 +90,8 @@ def slips_of(
         Frames with samples that were not received are passed over.
     packet_samples : int, optional
         Samples in a packet. What lies at the edges of packets is a matter of packets, not of slips.
+    judged : Judged, optional
+        ``judged_frames`` of these samples, where it is known already.
 
     Returns
     -------
@@ -101,10 +107,10 @@ def slips_of(
     dropped one: numbers are those found, and the interval is an estimate.
     """
     frames = repeated_frames(samples, sampling_rate_hz, received)
-    repeated, dropped, judged = _single(samples, received)
+    repeated, dropped, looked_at = _single(judged_frames(samples, received) if judged is None else judged)
     if packet_samples:
         repeated, dropped = (_inside_packets(places, packet_samples) for places in (repeated, dropped))
-    judged_s = judged / sampling_rate_hz
+    judged_s = looked_at / sampling_rate_hz
     counts = (len(repeated), len(dropped))
     chances = [_chance(count, rate * judged_s) for count, rate in zip(counts, CHANCE_PER_S, strict=True)]
     interval = _comb(np.sort(np.concatenate([repeated, dropped])), sampling_rate_hz)
@@ -133,9 +139,8 @@ def slips_of(
     )
 
 
-def _single(samples: Samples, received: Mask | None) -> tuple[Places, Places, int]:
+def _single(judged: Judged) -> tuple[Places, Places, int]:
     """Places of single samples repeated and dropped, and how many samples were judged."""
-    judged = judged_frames(samples, received)
     halves = np.mean(judged.x.reshape(len(judged.x), 2, FRAME // 2 + ORDER) ** 2, axis=2)
     steady = (judged.gain_db > STEADY_GAIN_DB) & (halves.max(axis=1) < STEADY_RATIO * halves.min(axis=1))
     part = judged.where(steady)

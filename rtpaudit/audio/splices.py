@@ -4,7 +4,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from rtpaudit.audio.judged import FRAME, judged_frames
+from rtpaudit.audio.judged import FRAME, Judged, judged_frames
 from rtpaudit.audio.scan import Mask, Samples
 
 PERIODS_MS = (10, 20, 30, 40, 60)
@@ -38,7 +38,11 @@ class Splices:
 
 
 def splices_of(
-    samples: Samples, sampling_rate_hz: int, packet_samples: int, received: Mask | None = None
+    samples: Samples,
+    sampling_rate_hz: int,
+    packet_samples: int,
+    received: Mask | None = None,
+    judged: Judged | None = None,
 ) -> Splices | None:
     """Joins that do not fit, at one place of every 10, 20, 30, 40 or 60 ms.
 
@@ -52,6 +56,8 @@ def splices_of(
         Samples in a packet.
     received : bool array, shape (n,), optional
         Frames with samples that were not received are passed over.
+    judged : Judged, optional
+        ``judged_frames`` of these samples, where it is known already.
 
     Returns
     -------
@@ -64,7 +70,7 @@ def splices_of(
     another leaves out, or repeats, the rest at every join. There linear prediction fails, always at the same place,
     while pulses of voice fall anywhere.
     """
-    judged = judged_frames(samples, received)
+    judged = judged_frames(samples, received) if judged is None else judged
     squares = np.minimum(judged.squares[:, :FRAME] / judged.variance[:, None], LARGEST)
     places = judged.starts[:, None] + np.arange(FRAME)
     found: list[Splices] = []
