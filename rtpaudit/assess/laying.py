@@ -53,8 +53,12 @@ def silence_reason(stream: Stream) -> str:
     return ""
 
 
-def lay_out(stream: Stream) -> Laid:
-    """Where the audio packets of a stream lie on its timeline."""
+def lay_out(stream: Stream, skew_ppm: float = float("nan")) -> Laid:
+    """Where the audio packets of a stream lie on its timeline.
+
+    ``skew_ppm`` is the sender's clock against the capture's, NaN where it is unknown: without it the clock of a fast
+    sender, by the end of a long call, would put the origin too early.
+    """
     packets = stream.packets
     rate = codec_of(stream.encoding).sampling_rate(stream.clock_rate_hz)
     fits = np.zeros(128, np.bool_)
@@ -65,7 +69,8 @@ def lay_out(stream: Stream) -> Laid:
     position = positions(
         common_ticks(stream)[rows], packets.time_ns[rows], stream.clock_rate_hz, rate, packets.segment[rows]
     )
-    early = packets.time_ns[rows] - (position * (NS_PER_S / rate)).astype(np.int64)
+    pace = rate * (1.0 + (0.0 if np.isnan(skew_ppm) else skew_ppm) * 1e-6)
+    early = packets.time_ns[rows] - (position * (NS_PER_S / pace)).astype(np.int64)
     origin_ns = int(early.min()) if len(rows) else int(packets.time_ns[0])
     return Laid(rows, position, rate, origin_ns, *_lay_recovered(stream, rows, position, rate, fits))
 

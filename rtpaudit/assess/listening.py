@@ -44,7 +44,7 @@ def listen_to(
 def _hear(one: Measured, buffers: Sequence[Octets]) -> StreamSound | None:
     if silence_reason(one.stream):
         return None
-    laid = lay_out(one.stream)
+    laid = lay_out(one.stream, one.network.clock_skew_ppm)
     samples = sent_samples(one.stream, laid, buffers)
     if len(samples) < SHORTEST_S * laid.rate_hz:
         return None

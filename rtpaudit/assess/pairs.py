@@ -48,7 +48,7 @@ def sound_of_call(
         from_ns=min(heard_one.origin_ns, heard_other.origin_ns),
     )
     if heard_one.rate_hz == heard_other.rate_hz:
-        first, second = _aligned(one, other, buffers)
+        first, second = _aligned(one, other, lead_s, buffers)
         found.echo_to_caller = echo_of(first, second, heard_one.rate_hz)
         found.echo_to_callee = echo_of(second, first, heard_one.rate_hz)
     return found
@@ -59,13 +59,13 @@ def _longest(streams: Sequence[Stream], sounds: Mapping[int, StreamSound]) -> St
     return max(sounding, key=lambda stream: sounds[id(stream)].scanned.samples, default=None)
 
 
-def _aligned(one: Stream, other: Stream, buffers: Sequence[Sequence[Octets]]) -> tuple[Samples, Samples]:
-    """What both said while both sounded, sample by sample at the same capture time."""
+def _aligned(one: Stream, other: Stream, lead_s: float, buffers: Sequence[Sequence[Octets]]) -> tuple[Samples, Samples]:
+    """What both said while both sounded, sample by sample at one capture time; ``one`` began ``lead_s`` before."""
     laid = [lay_out(stream) for stream in (one, other)]
     samples = [
         sent_samples(stream, place, buffers[stream.recording]) for stream, place in zip((one, other), laid, strict=True)
     ]
-    shift = round((laid[1].origin_ns - laid[0].origin_ns) * laid[0].rate_hz / NS_PER_S)
+    shift = round(lead_s * laid[0].rate_hz)
     first, second = samples[0][max(shift, 0) :], samples[1][max(-shift, 0) :]
     length = min(len(first), len(second))
     return first[:length], second[:length]

@@ -51,7 +51,8 @@ class SoundSource:
 
     def origin_ns(self, stream_id: str) -> int:
         """Capture time of a stream's first sample."""
-        return lay_out(self._streams[stream_id].stream).origin_ns
+        one = self._streams[stream_id]
+        return lay_out(one.stream, one.figures.clock_skew_ppm).origin_ns
 
     def both(self, call: AssessedCall) -> tuple[Samples, int]:
         """Both directions as heard, on the capture's clock: left what the caller said, right what the callee said.
@@ -81,8 +82,9 @@ class SoundSource:
         for one in streams:
             if silence_reason(one.stream):
                 continue
-            laid = lay_out(one.stream)
-            parts.append((keep_time(self._heard(one, laid), one.figures.clock_skew_ppm), laid.rate_hz, laid.origin_ns))
+            skew_ppm = one.figures.clock_skew_ppm
+            laid = lay_out(one.stream, skew_ppm)
+            parts.append((keep_time(self._heard(one, laid), skew_ppm), laid.rate_hz, laid.origin_ns))
         return parts
 
 
