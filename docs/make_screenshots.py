@@ -17,8 +17,8 @@ COLOURS = 128
 DESKTOP, PHONE = {"width": 1280, "height": 1180}, {"width": 390, "height": 1500}
 
 SHOTS = {
-    "page": ("#c03/f1", DESKTOP, "light"),
-    "page-night": ("#c02", DESKTOP, "dark"),
+    "page": ("#c03", DESKTOP, "light"),
+    "page-night": ("#c02/f1", DESKTOP, "dark"),
     "page-phone": ("#c02", PHONE, "light"),
 }
 

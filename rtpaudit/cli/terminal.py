@@ -68,8 +68,8 @@ class Bar:
         self._move("Reading", done, total)
 
     def writing(self, done: int, total: int) -> None:
-        """Calls whose sound is written, of those there are."""
-        self._move("Writing sound", done, total)
+        """Steps of writing that are done, of those there are."""
+        self._move("Writing the report", done, total)
 
     def _move(self, what: str, done: int, total: int) -> None:
         if not self._shown or time.monotonic() - self._began < PATIENCE_S:

@@ -36,6 +36,9 @@ CAUTION = (
 NOT_OURS = "is there and was not written by rtpaudit; choose another --out, or move it away"
 
 
+Progress = Callable[[int, int], None]
+
+
 @dataclass(frozen=True, slots=True)
 class Mark:
     """By what a folder of ours is known: a file in it, and how that begins."""
@@ -87,7 +90,7 @@ def write_folder(
     private: bool = False,
     single_file: bool = False,
     zone: tzinfo | None = None,
-    progress: Callable[[int, int], None] | None = None,
+    progress: Progress | None = None,
 ) -> Written:
     """Write the report of an audit in place of one that stands there, or not at all.
 
@@ -104,7 +107,7 @@ def write_folder(
     zone : tzinfo, optional
         In which the page shows times; the machine's own where left out.
     progress : callable, optional
-        Told how many calls' sound is written, of how many.
+        Told how many steps are done, of how many: each call's sound, then its part of the page.
 
     Raises
     ------
@@ -121,16 +124,17 @@ def write_folder(
     with new_folder(folder) as partial:
         if place != "nowhere":
             (partial / "audio").mkdir()
-            audio_files, left_out = write_audio(partial / "audio", calls, audit.sound, progress, waveforms.take)
+            audio_files, left_out = write_audio(
+                partial / "audio", calls, audit.sound, _part(progress, 0, 2), waveforms.take
+            )
             cautions += left_out
         for name, frame in tables.items():
             _write(partial / f"{name}.csv", csv_lines(name, frame))
             _write_parquet(partial / f"{name}.parquet", frame)
         _write(partial / "audit.json", document(tables, captures, profile_of(audit.profile, private), cautions))
         sounds = Sounds(audit.sound, waveforms, place)
-        write_page(
-            partial, Shown(tables, calls, captures, sounds, Clock(zone), audit.profile.playout, cautions, single_file)
-        )
+        shown = Shown(tables, calls, captures, sounds, Clock(zone), audit.profile.playout, cautions, single_file)
+        write_page(partial, shown, _part(progress, 0, 1) if place == "nowhere" else _part(progress, 1, 2))
     return Written(folder, tables, captures, audio_files, cautions)
 
 
@@ -159,6 +163,13 @@ def new_folder(folder: Path, mark: Mark = REPORT) -> Iterator[Path]:
         raise UnusableOutput(f"{folder}: cannot be written: {fault.strerror or fault}; choose another --out") from fault
     finally:
         shutil.rmtree(partial, ignore_errors=True)
+
+
+def _part(progress: Progress | None, part: int, parts: int) -> Progress | None:
+    """Progress of one part of the work, as part of all of it."""
+    if progress is None:
+        return None
+    return lambda done, total: progress(part * total + done, parts * total)
 
 
 def _put(partial: Path, place: Path, mark: Mark) -> None:

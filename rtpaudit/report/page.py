@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Callable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, field
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
@@ -54,13 +54,13 @@ class Shown:
         object.__setattr__(self, "told", Told.of(self.tables))
 
 
-def write_page(folder: Path, shown: Shown) -> None:
+def write_page(folder: Path, shown: Shown, progress: Callable[[int, int], None] | None = None) -> None:
     """Write the page, and ``calls`` where it needs them; in a single file everything is in it."""
     ordered = worst_first(shown)
     detail = detail_for(len(ordered))
     in_full: list[tuple[str, str]] = []
     room = ROOM_IN_FULL
-    for call in ordered:
+    for done, call in enumerate(ordered, start=1):
         view = shell.as_json(call_view(call, shown.told, shown.clock, shown.sounds, shown.settings, detail))
         room -= len(view)
         if shown.single_file or not in_full or (len(in_full) < IN_FULL and room > 0):
@@ -68,6 +68,8 @@ def write_page(folder: Path, shown: Shown) -> None:
         else:
             room = 0
             _write_call(folder / "calls", call.id, view)
+        if progress:
+            progress(done, len(ordered))
     _write(folder / "index.html", _page(shown, ordered, in_full))
 
 

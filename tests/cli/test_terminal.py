@@ -68,7 +68,7 @@ def test_long_work_shows_a_bar_that_goes_away(started: list[str], monkeypatch: p
         bar.reading(10, 100)
         bar.reading(20, 100)
         bar.writing(1, 4)
-    assert started == ["Reading of 100", "10", "20", "Writing sound of 4", "1", "stopped"]
+    assert started == ["Reading of 100", "10", "20", "Writing the report of 4", "1", "stopped"]
 
 
 def test_short_work_shows_none(started: list[str]) -> None:

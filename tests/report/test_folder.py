@@ -194,3 +194,10 @@ def test_reports_of_the_same_audit_are_the_same(tmp_path: Path) -> None:
     one, two = everything(tmp_path / "one"), everything(tmp_path / "two")
     assert one == two
     assert np.all([len(octets) for octets in one.values()])
+
+
+@pytest.mark.parametrize(("options", "steps"), [({}, 4), ({"private": True}, 2), ({"audio": False}, 2)])
+def test_progress_goes_from_the_first_step_to_the_last(tmp_path: Path, options: dict[str, bool], steps: int) -> None:
+    told: list[tuple[int, int]] = []
+    write_folder(Audited(), tmp_path / "out", progress=lambda done, total: told.append((done, total)), **options)
+    assert told == [(done, steps) for done in range(1, steps + 1)]

@@ -30,10 +30,10 @@ class Tape {
       right: 0,
       visible: false,
       fill_color: colour("accent"),
-      fill_alpha: 0.13,
+      fill_alpha: 0.16,
       line_color: colour("accent"),
       line_alpha: 0.8,
-      level: "overlay",
+      level: "underlay",
       propagate_hover: true,
     });
     this.figure.add_layout(this.mark);
