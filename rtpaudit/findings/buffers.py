@@ -5,7 +5,7 @@ from collections.abc import Iterator
 import numpy as np
 
 from rtpaudit.findings.case import Case
-from rtpaudit.findings.excursions import excursions
+from rtpaudit.findings.excursions import excursions, is_calm
 from rtpaudit.findings.facts import StreamFacts
 from rtpaudit.findings.rule import BEFORE, COMMON_PRACTICE, ENDPOINT, UNKNOWN, Evidence, rule
 from rtpaudit.findings.share import claim
@@ -118,7 +118,10 @@ def _simulated(case: Case, facts: StreamFacts, varies: float, shallow: bool) -> 
     late = facts.late_items
     late = late[case.left(facts)[late] > 0.3]
     share = percent(len(late), facts.sequence.expected)
-    buffer, usual = facts.profile.playout.nominal_ms, _usual_ms(facts)
+    buffer = facts.profile.playout.nominal_ms
+    if share < LEAST_DISCARD_PCT and is_calm(facts, buffer):
+        return
+    usual = _usual_ms(facts)
     # Whether packets come too late hangs on how late the first one was: variation over the buffer tells by itself.
     if not (share >= LEAST_DISCARD_PCT or usual > buffer) or (shallow and buffer >= WITHIN_MS):
         return

@@ -1,6 +1,6 @@
 """One call as the rules see it: its directions, its times, and the rest of the audit around it."""
 
-from collections.abc import Iterable
+from collections.abc import Iterable, Sequence
 from functools import cached_property
 
 import numpy as np
@@ -12,6 +12,34 @@ from rtpaudit.decode.icmp import IcmpError
 from rtpaudit.findings.facts import StreamFacts
 from rtpaudit.profile import Profile
 from rtpaudit.units import NS_PER_S
+
+
+class Crowd:
+    """Audio streams as columns, so that each of thousands can be held against all others."""
+
+    def __init__(self, streams: Sequence[StreamFacts]) -> None:
+        self._streams = streams
+        hosts: dict[str, int] = {}
+        ends = [[hosts.setdefault(host, len(hosts)) for host in _ends(one)] for one in streams]
+        self._hosts = hosts
+        self._ends = np.array(ends, np.int64).reshape(-1, 2)
+        self._recording = np.array([one.stream.recording for one in streams], np.int64)
+        self._began_ns = np.array([one.assessed.started_ns for one in streams], np.int64)
+        self._ended_ns = np.array([one.assessed.ended_ns for one in streams], np.int64)
+        self._loses = np.array([one.assessed.figures.packets_lost > 0 for one in streams], np.bool_)
+
+    def strangers(self, facts: StreamFacts) -> tuple[int, list[StreamFacts]]:
+        """How many streams of the same recording run beside one between other hosts, and those that miss packets."""
+        source, destination = (self._hosts[host] for host in _ends(facts))
+        beside = self._recording == facts.stream.recording
+        beside &= (self._began_ns < facts.assessed.ended_ns) & (facts.assessed.started_ns < self._ended_ns)
+        for column in self._ends.T:
+            beside &= (column != source) & (column != destination)
+        return int(beside.sum()), [self._streams[k] for k in np.flatnonzero(beside & self._loses).tolist()]
+
+
+def _ends(facts: StreamFacts) -> tuple[str, str]:
+    return facts.stream.source, facts.stream.destination
 
 
 class Whole:
@@ -42,20 +70,59 @@ class Whole:
 
     def last_ns(self, case: "Case") -> int:
         """Last sign of life of anything in the recording of a call."""
-        own = case.recordings
-        times = [one.ended_ns for one in self.assessment.streams if one.stream.recording in own]
-        times += [one.ended_ns for one in self.assessment.calls if one.capture == case.call.capture]
-        times += [row.time_ns for row in self.assessment.messages if row.capture == case.call.capture]
-        return max(times, default=case.call.ended_ns)
+        of_streams, of_capture = self._last_ns
+        times = [of_streams[number] for number in case.recordings if number in of_streams]
+        return max([*times, of_capture.get(case.call.capture, case.call.ended_ns)])
+
+    @cached_property
+    def _last_ns(self) -> tuple[dict[int, int], dict[str, int]]:
+        """Last sign of life of streams by recording, of calls and messages by capture."""
+        of_streams: dict[int, int] = {}
+        for stream in self.assessment.streams:
+            number = stream.stream.recording
+            of_streams[number] = max(of_streams.get(number, 0), stream.ended_ns)
+        of_capture: dict[str, int] = {}
+        for capture, time_ns in (
+            *((call.capture, call.ended_ns) for call in self.assessment.calls),
+            *((row.capture, row.time_ns) for row in self.assessment.messages),
+        ):
+            of_capture[capture] = max(of_capture.get(capture, 0), time_ns)
+        return of_streams, of_capture
 
     def events_of(self, facts: StreamFacts) -> list[EventRow]:
         """Telephone events that a stream carried."""
-        return [row for row in self.assessment.events if row.stream == facts.id and row.carried_as == "event"]
+        return self._events.get(facts.id, [])
+
+    @cached_property
+    def _events(self) -> dict[str, list[EventRow]]:
+        found: dict[str, list[EventRow]] = {}
+        for row in self.assessment.events:
+            if row.carried_as == "event":
+                found.setdefault(row.stream, []).append(row)
+        return found
 
     @cached_property
     def audio(self) -> list[StreamFacts]:
         """All audio streams."""
         return [self.facts(one) for one in self.assessment.streams if one.stream.media == "audio"]
+
+    @cached_property
+    def ssrcs(self) -> frozenset[int]:
+        """Of all audio streams."""
+        return frozenset(one.stream.ssrc for one in self.audio)
+
+    @cached_property
+    def by_source(self) -> dict[tuple[int, str], list[StreamFacts]]:
+        """Audio streams by recording and sending host."""
+        found: dict[tuple[int, str], list[StreamFacts]] = {}
+        for one in self.audio:
+            found.setdefault((one.stream.recording, one.stream.source), []).append(one)
+        return found
+
+    @cached_property
+    def crowd(self) -> Crowd:
+        """The audio streams as columns."""
+        return Crowd(self.audio)
 
 
 class Case:
@@ -121,6 +188,12 @@ class Case:
     def others_of(self, facts: StreamFacts) -> list[StreamFacts]:
         """Streams of the other direction."""
         return self.from_callee if facts in self.from_caller else self.from_caller
+
+    def elsewhere_from(self, facts: StreamFacts) -> list[StreamFacts]:
+        """Audio streams of other calls that the sender of a stream sent in the same recording."""
+        own = {one.id for one in self.streams}
+        sent = self.whole.by_source.get((facts.stream.recording, facts.stream.source), [])
+        return [one for one in sent if one.id not in own]
 
     def elsewhere(self) -> Iterable[StreamFacts]:
         """Audio streams of other calls in the same recording."""

@@ -36,6 +36,11 @@ class Excursions:
     """delay of each timed packet above the base line. Shape (timed,)"""
 
 
+def is_calm(facts: StreamFacts, least_ms: float) -> bool:
+    """Whether no packet is delayed so much that it could be in an excursion of that height: most streams are so."""
+    return not facts.timed.delay_ms.max(initial=0.0) >= least_ms
+
+
 def excursions(facts: StreamFacts, least_ms: float) -> Excursions:
     """Passages that go ``least_ms`` or more, and well beyond the usual spread, above a slow base line.
 

@@ -55,7 +55,7 @@ def _reports_on_unseen(case: Case, facts: StreamFacts) -> bool:
     reported = case.whole.assessment.reported.get(facts.stream.recording)
     if reported is None:
         return False
-    seen = {one.stream.ssrc for one in case.whole.audio}
+    seen = case.whole.ssrcs
     begin, end = facts.assessed.started_ns - NS_PER_S, facts.assessed.ended_ns + 10 * NS_PER_S
     return any(
         begin <= said.time_ns <= end

@@ -98,7 +98,7 @@ def marking_absent(case: Case, limit: float) -> Iterator[Evidence]:
         if facts.assessed.figures.dscp > limit or _changes(facts):
             continue
         opposite = [one for one in case.others_of(facts) if one.assessed.figures.dscp in VOICE_MARKINGS]
-        marked = opposite or [one for one in case.elsewhere() if one.stream.source == facts.stream.source]
+        marked = opposite or case.elsewhere_from(facts)
         marked = [one for one in marked if one.assessed.figures.dscp in VOICE_MARKINGS]
         if not marked:
             continue

@@ -5,7 +5,7 @@ from collections.abc import Iterator
 import numpy as np
 
 from rtpaudit.findings.case import Case
-from rtpaudit.findings.excursions import Excursions, excursions
+from rtpaudit.findings.excursions import Excursions, excursions, is_calm
 from rtpaudit.findings.facts import StreamFacts
 from rtpaudit.findings.pacing import pacing_of
 from rtpaudit.findings.patterns import Rhythm, rhythm
@@ -30,6 +30,8 @@ HOLE_MS = 60.0
 def delay_spike(case: Case, limit: float) -> Iterator[Evidence]:
     """Delay that jumps up for a moment."""
     for facts in case.streams:
+        if is_calm(facts, limit):
+            continue
         found = excursions(facts, limit)
         if not len(found.peak_ms) or _beat(found) or pacing_of(facts) or not _rare(found):
             continue
@@ -60,6 +62,8 @@ def delay_spike(case: Case, limit: float) -> Iterator[Evidence]:
 def periodic_delay(case: Case, limit: float) -> Iterator[Evidence]:
     """Delay that jumps up by the clock."""
     for facts in case.streams:
+        if is_calm(facts, limit):
+            continue
         found = excursions(facts, limit)
         beat = _beat(found)
         if beat is None or pacing_of(facts):
