@@ -1,11 +1,13 @@
 """A capture of many two-way G.711 calls, made row by row of streams so that making it takes less time than reading."""
 
+from collections.abc import Callable
 from pathlib import Path
 
 import numpy as np
 import soundfile
 
 from rtpaudit.codecs.g711 import encode_pcmu
+from tests.benchmarks.dialogs import closing, opening
 from tests.craft import ethernet, ipv4, pcap, rtp, udp
 
 AUDIO = Path(__file__).parents[2] / "fixtures" / "audio"
@@ -13,8 +15,13 @@ START_NS = 1_772_534_400_000_000_000
 RECORD = 16 + 14 + 20 + 8 + 12 + 160
 
 
-def make_capture(path: Path, calls: int = 100, seconds: float = 180.0, loss: float = 0.002, seed: int = 1) -> int:
-    """Write a pcap of ``calls`` two-way PCMU calls side by side, 20 ms a packet; returns the number of packets."""
+def make_capture(
+    path: Path, calls: int = 100, seconds: float = 180.0, loss: float = 0.002, seed: int = 1, dialogs: bool = False
+) -> int:
+    """Write a pcap of ``calls`` two-way PCMU calls side by side, 20 ms a packet; returns the number of RTP packets.
+
+    With ``dialogs`` each of them is set up and ended by SIP.
+    """
     draw = np.random.default_rng(seed)
     voices = [encode_pcmu(soundfile.read(AUDIO / name, dtype="int16")[0]) for name in ("desk.wav", "guest.wav")]
     streams, steps = 2 * calls, int(seconds * 50)
@@ -25,6 +32,8 @@ def make_capture(path: Path, calls: int = 100, seconds: float = 180.0, loss: flo
     packets = 0
     with open(path, "wb") as file:
         file.write(pcap([]))
+        if dialogs:
+            file.write(_messages(calls, opening, START_NS - 2_000_000_000))
         for k in range(steps):
             rows = heads.copy()
             at = START_NS + k * 20_000_000 + spread_ns + draw.integers(0, 90_000, streams)
@@ -38,13 +47,28 @@ def make_capture(path: Path, calls: int = 100, seconds: float = 180.0, loss: flo
             rows = rows[draw.random(streams) >= loss]
             file.write(rows.tobytes())
             packets += len(rows)
+        if dialogs:
+            file.write(_messages(calls, closing, START_NS + steps * 20_000_000))
     return packets
+
+
+def _messages(calls: int, made: Callable[..., list[tuple[int, bytes]]], at_ns: int) -> bytes:
+    """Records of one part of all dialogs by time; the calls begin within a second."""
+    rows = [row for call in range(calls) for row in made(call, _ends(call), at_ns + call * 1_000_000_000 // calls)]
+    return b"".join(record for _, record in sorted(rows, key=lambda row: row[0]))
+
+
+def _ends(call: int) -> list[tuple[str, int]]:
+    """Address and port of both sides of a call."""
+    return [
+        (f"192.0.2.{call % 250 + 1}", 16_384 + 2 * call % 49_000),
+        (f"198.51.100.{call % 250 + 1}", 16_384 + (13_616 + 2 * call) % 49_000),
+    ]
 
 
 def _record(number: int) -> np.ndarray:
     call, side = divmod(number, 2)
-    ends = [(f"192.0.2.{call % 250 + 1}", 16_384 + 2 * call), (f"198.51.100.{call % 250 + 1}", 30_000 + 2 * call)]
-    (source, source_port), (destination, destination_port) = ends if side == 0 else ends[::-1]
+    (source, source_port), (destination, destination_port) = _ends(call) if side == 0 else _ends(call)[::-1]
     packet = rtp(bytes(160), ssrc=0x0A000000 + number)
     frame = ethernet(ipv4(udp(packet, source_port, destination_port), source, destination, dscp=46))
     return np.frombuffer(pcap([frame])[24:], np.uint8).copy()
