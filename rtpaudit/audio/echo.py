@@ -19,6 +19,7 @@ LONGEST_S = 1.0
 EARLIER_S = 0.1
 """looked at before the sound as well: what comes before it is no echo of it"""
 BLOCK_S = 0.016
+BLOCKS_AT_ONCE = 1 << 13
 REGIONS, SEGMENTS = 5, 16
 """parts of the call that are judged each for itself, so that clocks that drift do not blur them; segments in each"""
 LEAST_SEGMENTS = 4
@@ -165,8 +166,11 @@ def _segments(spoken: Samples, heard: Samples, rate: int) -> Places:
 
 def _levels(samples: Samples, block: int) -> Vector:
     """Level of each block about its mean. [dBov]"""
-    whole = samples[: len(samples) // block * block].reshape(-1, block).astype(np.float32)
-    return dbov(np.var(whole, axis=1).astype(np.float64))
+    whole = samples[: len(samples) // block * block].reshape(-1, block)
+    # A call of hours at a time would take four times its own memory.
+    runs = range(0, len(whole), BLOCKS_AT_ONCE)
+    power = [np.var(whole[first : first + BLOCKS_AT_ONCE].astype(np.float32), axis=1) for first in runs]
+    return dbov(np.concatenate([np.empty(0, np.float32), *power]).astype(np.float64))
 
 
 def _delay(spoken: Samples, heard: Samples, starts: Places, rate: int) -> tuple[float, float]:
