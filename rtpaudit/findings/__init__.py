@@ -55,7 +55,10 @@ def diagnose(assessment: Assessment, profile: Profile) -> list[Finding]:
     whole = Whole(assessment, profile)
     findings: list[Finding] = []
     for call in assessment.calls:
-        weighed = _weigh(Case(call, whole))
+        case = Case(call, whole)
+        weighed = _weigh(case)
+        for facts in case.streams:
+            facts.forget()
         call.headline = next((one.finding for one in weighed if one.severity != "remark"), "")
         findings += weighed
     return findings

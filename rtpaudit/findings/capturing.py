@@ -1,6 +1,7 @@
 """Rules about the capture itself: what it dropped, doubled, cut or misdated. None of it is the network's fault."""
 
 from collections.abc import Iterator
+from itertools import islice
 
 import numpy as np
 
@@ -16,8 +17,12 @@ from rtpaudit.findings.words import many, ms, number, pct
 from rtpaudit.units import percent
 
 CLOCK_STEP_MS = 30.0
+FEWEST_DENIED = 3
+MOST_SHARE = 0.7
+"""of the gaps, and of the other streams, that have to agree"""
+TOGETHER_LOST_S = 0.03
 MOST_ASKED = 50
-"""streams beside one that are asked whether they miss packets at the same moments"""
+"""streams beside one that are asked whether they miss packets, or step, at the same moments"""
 TOGETHER_S = 0.1
 """within which the steps of several streams are one step of the clock"""
 
@@ -160,7 +165,8 @@ def capture_clock_step(case: Case, limit: float) -> Iterator[Evidence]:
     steps = {facts.id: clock_steps(facts, limit) for facts in case.streams}
     for facts in case.streams:
         for step, at_ns, back in steps[facts.id]:
-            others = [one for one in [*case.streams, *case.elsewhere()] if one is not facts and _runs_at(one, at_ns)]
+            beside = (one for one in [*case.streams, *case.elsewhere()] if one is not facts and _runs_at(one, at_ns))
+            others = list(islice(beside, MOST_ASKED))
             agreeing = [one for one in others if _agrees(clock_steps(one, limit), step, at_ns)]
             if not back and (not others or len(agreeing) < len(others) / 2):
                 continue
@@ -222,22 +228,30 @@ def _late_from(facts: StreamFacts, at_ns: int) -> np.ndarray:
 
 
 def _denied(facts: StreamFacts) -> bool:
-    """Whether the far receiver reports far less loss than this capture shows.
+    """Whether the far receiver reports far less loss than this capture shows in the same intervals.
 
     It counts copies as received (RFC 3550, A.3), so that they hide losses from it and here they may not.
     """
-    figures = facts.assessed.figures
-    shown = percent(figures.packets_lost - figures.packets_duplicated, figures.packets_expected)
-    return bool(shown >= 0.5 and figures.reported_loss_pct < 0.3 * shown)
+    far = facts.assessed.far_end
+    if far is None or far.between is None or len(far.captured_loss_pct) != len(far.set_aside):
+        return False
+    good = np.array([not why for why in far.set_aside], np.bool_)
+    shown = far.captured_loss_pct * far.between.expected / 100.0
+    good &= ~np.isnan(shown) & ~np.isnan(far.between.lost)
+    expected = float(far.between.expected[good].sum())
+    copies = facts.assessed.figures.packets_duplicated
+    missing = float(shown[good].sum()) - copies
+    reported = float(far.between.lost[good].sum())
+    return missing >= max(FEWEST_DENIED, 0.005 * expected) and reported < 0.3 * missing
 
 
 def _missing_everywhere(case: Case, facts: StreamFacts) -> float:
     """How sure it is that the capture missed them, as streams between other ends miss packets at the same moments."""
     own = times_of(facts, facts.lost_items, case)
     running, strangers = case.whole.crowd.strangers(facts)
-    if not strangers or not len(own[0]) or len(strangers) < 0.7 * running:
+    if not strangers or not len(own[0]) or len(strangers) < MOST_SHARE * running:
         return 0.0
     # So many tell as well as all; all against all of thousands would take hours.
     asked = strangers[:: max(1, len(strangers) // MOST_ASKED)]
-    hits = [falling_together(own, times_of(one, one.lost_items, case), 0.03).mean() for one in asked]
-    return 0.85 if float(np.max(hits)) >= 0.7 else 0.0
+    hits = [falling_together(own, times_of(one, one.lost_items, case), TOGETHER_LOST_S).mean() for one in asked]
+    return 0.85 if float(np.max(hits)) >= MOST_SHARE else 0.0

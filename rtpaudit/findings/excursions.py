@@ -1,6 +1,7 @@
 """Moments in which the delay of a stream leaves its usual course."""
 
 from dataclasses import dataclass
+from typing import cast
 
 import numpy as np
 from numpy.typing import NDArray
@@ -52,9 +53,11 @@ def excursions(facts: StreamFacts, least_ms: float) -> Excursions:
     if len(ordered) < FEWEST_PACKETS:
         return _none(event_of, np.zeros(len(timed.row)))
     at = timed.time_s[ordered]
-    level = timed.delay_ms[ordered]
-    step = _lasting(level, facts.packet_time_ms)
-    above_ms = timed.delay_ms - np.interp(timed.time_s, at, step + _base(at, level - step))
+    if "above" not in facts.remembered:
+        level = timed.delay_ms[ordered]
+        step = _lasting(level, facts.packet_time_ms)
+        facts.remembered["above"] = timed.delay_ms - np.interp(timed.time_s, at, step + _base(at, level - step))
+    above_ms = cast(Floats, facts.remembered["above"])
     above = above_ms[ordered]
     high = max(least_ms, OVER_SPREAD * float(np.percentile(above, 75)))
     rows = np.flatnonzero(above > high / 2)

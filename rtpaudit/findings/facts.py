@@ -218,6 +218,20 @@ class StreamFacts:
         delay[self.timed.row] = self.timed.delay_ms
         return delay
 
+    def forget(self) -> None:
+        """Let go of the columns, which take as much memory as the packets; they are worked out again when asked for."""
+        for name in HEAVY:
+            self.__dict__.pop(name, None)
+        self.remembered.clear()
+
     def calm_delay_ms(self, share_pct: float) -> float:
         """Delay variation that so many of the packets stay at or below; NaN without any. [ms]"""
         return float(np.percentile(self.timed.delay_ms, share_pct)) if len(self.timed.delay_ms) else float("nan")
+
+
+HEAVY = tuple(name for name, value in vars(StreamFacts).items() if isinstance(value, cached_property))
+
+
+def is_cut(facts: StreamFacts) -> bool:
+    """Whether the capture cut a stream's packets short, so that its sound cannot be judged."""
+    return bool((facts.packets.captured < facts.packets.length).mean() > 0.01)

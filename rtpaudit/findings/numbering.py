@@ -92,6 +92,11 @@ def wrong_steps(facts: StreamFacts) -> WrongSteps:
     )
 
 
+def keeps_no_time(facts: StreamFacts) -> bool:
+    """Whether timestamps are so wrong that sound laid by them lies at no known time."""
+    return timestamp_rate(facts) is not None or wrong_steps(facts).jumps > 0
+
+
 def packet_times_of(facts: StreamFacts) -> list[tuple[int, float]]:
     """First packet and length of each passage of one packet time that lasts. [row, ms]"""
     packets, rate = facts.packets, facts.stream.clock_rate_hz

@@ -98,7 +98,7 @@ def _lone_stream(unseen: Unseen) -> Evidence:
     "media-late", group="call", limit=1.0, unit="s", basis=COMMON_PRACTICE,
     means="The call was answered, and it took a while until the first voice packet came, so that the first words "
     "were lost.",
-    measured_as="time from the answer (2xx) to the first voice packet of a direction",
+    measured_as="time from the answer (2xx) to the first voice packet of a direction, unless senders leave out silence",
     check_next="Look at the device that answers, and at relays and address translation that open the way only after "
     "a packet from inside.",
     severity="a concern, a fault from three times the limit",
@@ -113,21 +113,18 @@ def media_late(case: Case, limit: float) -> Iterator[Evidence]:
             continue
         first = min(facts.assessed.started_ns for facts in streams)
         late = (first - answered_ns) / NS_PER_S
-        if late < limit or _held_until(case, first):
+        if late < limit or _held_until(case, first) or _leave_out_silence(case):
             continue
-        silent = any(suppresses_silence(facts) and not sends_comfort_noise(facts) for facts in streams)
         yield Evidence(
             measured=late,
             says=f"The first voice packet to the {listener} came {seconds(late)} after the answer, so that the "
-            f"{listener} missed the first "
-            f"words{', unless there were none: this sender leaves out silence' if silent else ''}.",
+            f"{listener} missed the first words.",
             stream=min(streams, key=lambda facts: facts.assessed.started_ns).id,
             where=UNKNOWN,
-            confidence_pct=50.0 if silent else 90.0,
+            confidence_pct=90.0,
             from_s=case.seconds(answered_ns),
             to_s=case.seconds(first),
-            at_least="remark" if silent else "fault" if late >= 3 * limit else "concern",
-            at_most="remark" if silent else "fault",
+            at_least="fault" if late >= 3 * limit else "concern",
             gravity=5.0 * late,
         )
 
@@ -263,6 +260,11 @@ def _either(unseen: Unseen) -> str:
 
 def _because(reasons: list[str]) -> str:
     return f"; {' and '.join(reasons)}" if reasons else ""
+
+
+def _leave_out_silence(case: Case) -> bool:
+    """Whether senders here say nothing while nobody speaks: then a late packet may be a late word."""
+    return any(suppresses_silence(facts) and not sends_comfort_noise(facts) for facts in case.streams)
 
 
 def _held_until(case: Case, time_ns: int) -> bool:

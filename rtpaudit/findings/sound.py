@@ -10,13 +10,16 @@ from rtpaudit.audio.echo import Echo
 from rtpaudit.audio.level import SILENCE_DBOV, dbm0
 from rtpaudit.audio.silence import Passage
 from rtpaudit.emodel.g107 import rating
+from rtpaudit.findings.agreed import suppresses_silence
 from rtpaudit.findings.case import Case
-from rtpaudit.findings.facts import StreamFacts
+from rtpaudit.findings.facts import StreamFacts, is_cut
+from rtpaudit.findings.numbering import keeps_no_time
 from rtpaudit.findings.rule import COMMON_PRACTICE, ENDPOINT, UNKNOWN, Evidence, rule
 from rtpaudit.findings.words import ms, number, pct, seconds, times
 from rtpaudit.planning import PARAMETERS
 from rtpaudit.units import NS_PER_S
 
+MOSTLY_PCT = 80.0
 DEAD_DBOV = -68.0
 """of a whole stream: A-law's own silence is at -72 dBov"""
 LEAST_SPEECH_DBOV = -62.0
@@ -154,7 +157,10 @@ def noise(case: Case, limit: float) -> Iterator[Evidence]:
         hum_level = sound.hum.level_dbov if sound.hum is not None else -np.inf
         # Speech all along, and music, have no pauses that could be told.
         distance = sound.level.active_dbov - level
-        if not level > limit or not distance < FAR_BELOW_DB or hum_level > level - 3.0 or not _has_steady_floor(sound):
+        hums = hum_level > level - 3.0
+        if not level > limit or not distance < FAR_BELOW_DB or hums or suppresses_silence(facts):
+            continue
+        if not _has_steady_floor(sound):
             continue
         yield Evidence(
             measured=level,
@@ -207,7 +213,7 @@ def hum(case: Case, limit: float) -> Iterator[Evidence]:
 )  # fmt: skip
 def dead_air(case: Case, limit: float) -> Iterator[Evidence]:
     """Packets without sound."""
-    silent = [facts for facts, sound in _sounds(case) if _never_sounds(facts, sound)]
+    silent = [facts for facts, sound in _sounds(case) if _never_sounds(facts, sound) and not is_cut(facts)]
     for facts in silent:
         if facts.duration_s < limit:
             continue
@@ -223,8 +229,7 @@ def dead_air(case: Case, limit: float) -> Iterator[Evidence]:
         )
     if silent:
         return
-    both = [one for one in case.call.sound.dead_air if one.duration_s >= limit] if case.call.sound is not None else []
-    both = [one for one in both if not _held_at(case, one.from_s)]
+    both = [one for one in _dead_together(case) if one.duration_s >= limit]
     if both and case.call.sound is not None:
         origin = case.seconds(case.call.sound.from_ns)
         longest = max(one.duration_s for one in both)
@@ -328,14 +333,21 @@ def _goes_mute(sound: StreamSound, passage: Passage) -> bool:
     return passage.received_pct > 90.0 and passage.level_dbov < -90.0 and sound.noise_dbov > -80.0
 
 
-def _held_at(case: Case, from_s: float) -> bool:
-    said, sound = case.call.signalled, case.call.sound
-    if said is None or sound is None:
-        return False
-    at_ns = sound.from_ns + round(from_s * NS_PER_S)
-    return any(
-        hold.from_ns <= at_ns + NS_PER_S and (hold.until_ns is None or at_ns < hold.until_ns) for hold in said.holds
-    )
+def _dead_together(case: Case) -> list[Passage]:
+    """Passages of the talk in which neither side had any sound though packets came."""
+    sound, said = case.call.sound, case.call.signalled
+    if sound is None or any(is_cut(facts) or keeps_no_time(facts) for facts in case.streams):
+        return []
+    answered = case.call.started_ns if case.call.answered_ns is None else case.call.answered_ns
+    found = []
+    for one in sound.dead_air:
+        begin, end = (sound.from_ns + round(at * NS_PER_S) for at in (one.from_s, one.to_s))
+        held = said is not None and any(
+            hold.from_ns <= begin + NS_PER_S and (hold.until_ns is None or begin < hold.until_ns) for hold in said.holds
+        )
+        if one.received_pct >= MOSTLY_PCT and not held and begin >= answered and end <= case.heard_until_ns + NS_PER_S:
+            found.append(one)
+    return found
 
 
 def _has_steady_floor(sound: StreamSound) -> bool:
