@@ -13,10 +13,14 @@ from rtpaudit.columns import TABLES
 from rtpaudit.report.folder import write_folder
 from tests.report import made
 
-COMMANDS = {"triage", "nightly", "demo", "explain"}
+COMMANDS = {"triage", "nightly", "listen", "demo", "explain"}
 TRIAGE_OPTIONS = {
     "--out", "--payload-type", "--delay", "--profile", "--zone", "--private", "--digits", "--quiet", "--json",
     "--fail-below", "--party", "--at", "--call", "--near", "--excerpt", "--single-file",
+}  # fmt: skip
+LISTEN_OPTIONS = {
+    "--out", "--payload-type", "--delay", "--profile", "--zone", "--private", "--digits", "--quiet", "--json",
+    "--ratings", "--key", "--clips", "--seed",
 }  # fmt: skip
 
 COLUMNS = {
@@ -77,8 +81,9 @@ def test_the_commands_are_those_promised() -> None:
     assert {line.split()[0] for line in listed if line[2:3].strip()} == COMMANDS
 
 
-def test_triage_has_the_options_promised_and_no_others() -> None:
-    assert {word for word in shown("triage", "--help") if word.startswith("--")} - {"--help"} == TRIAGE_OPTIONS
+@pytest.mark.parametrize(("command", "options"), [("triage", TRIAGE_OPTIONS), ("listen", LISTEN_OPTIONS)])
+def test_a_command_has_the_options_promised_and_no_others(command: str, options: set[str]) -> None:
+    assert {word for word in shown(command, "--help") if word.startswith("--")} - {"--help"} == options
 
 
 def test_exit_status_is_0_1_or_2() -> None:

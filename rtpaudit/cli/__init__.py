@@ -9,7 +9,7 @@ from typing import Annotated, Any
 import typer
 
 from rtpaudit import __version__
-from rtpaudit.cli import demo, explain, nightly, triage
+from rtpaudit.cli import demo, explain, listen, nightly, triage
 from rtpaudit.cli.start import start
 from rtpaudit.cli.terminal import complain, say
 from rtpaudit.errors import RtpAuditError
@@ -28,6 +28,7 @@ app = typer.Typer(
 )
 app.command("triage")(triage.triage)
 app.command("nightly")(nightly.nightly)
+app.command("listen")(listen.listen)
 app.command("demo")(demo.demo)
 app.command("explain")(explain.explain)
 
