@@ -1,6 +1,6 @@
 // The list of calls: only the rows in sight are in the document, so that ten thousand stay quick.
 
-const ROW_HEIGHT = 84;
+const ROW_HEIGHT = 98;
 const AHEAD = 6;
 
 function readCall(cells, place) {
@@ -129,7 +129,7 @@ class CallList {
       make("span", {class: "row-length"}, known(call.length) ? span(call.length) : ""),
       make("span", {class: "row-who"}, `${call.caller} → ${call.callee}`),
       make("span", {class: "row-found"}, found),
-      make("span", {class: "row-ears"}, bar("caller", call.callerR), bar("callee", call.calleeR)),
+      make("span", {class: "row-ears"}, bar("caller hears", call.callerR), bar("callee hears", call.calleeR)),
     );
   }
 
@@ -191,6 +191,6 @@ function bar(ear, r) {
         ? make("span", {class: `bar-fill band-${level}`, style: {width: `${Math.max(2, Math.min(100, r))}%`}})
         : null,
     ),
-    make("span", {class: "bar-r"}, known(r) ? figure(r) : "–"),
+    make("span", {class: "bar-r"}, known(r) ? `${figure(r)} ${bandName(r)}` : "not rated"),
   );
 }

@@ -16,6 +16,8 @@ const WINDOW = 2;
 const SCALES = [20, 40, 60, 80, 100, 150, 200, 300, 400, 600, 800, 1000, 1500, 2000, 3000, 5000, 10000, 100000, 1e7];
 const STEPS = [0.05, 0.1, 0.2, 0.5, 1, 2, 5, 10, 15, 30, 60, 120, 300, 600, 900, 1800, 3600, 7200];
 const SHORTEST = 0.05;
+const ROOM_FOR_FIGURE = 26;
+const ROOM_FOR_WORDS = 118;
 const MANY_WINDOWS = 150;
 
 // Turns the short writing of a stream into arrays in seconds and milliseconds.
@@ -113,6 +115,7 @@ class Picture {
       border_fill_color: null,
       outline_line_color: null,
     });
+    this.ratings = [];
     const ticker = this.ticker();
     figure.add_layout(new B.Grid({dimension: 0, ticker, grid_line_color: colour("line"), grid_line_width: 1}));
     for (const [ear, side] of Object.entries(SIDES)) {
@@ -198,6 +201,7 @@ class Picture {
       return {
         left: begin,
         right: Math.max(begin, Math.min(begin + WINDOW, lane.end)),
+        r: lane.windows.r?.[k],
         level: band(lane.windows.r?.[k]),
       };
     });
@@ -218,6 +222,7 @@ class Picture {
       {...columns(rated), fill: rated.map(one => shades[one.level])},
       {fill_color: {field: "fill"}, line_color: fine ? {field: "fill"} : colour("paper"), line_width: 1},
     );
+    this.writeRatings(figure, rated, side);
     if (other.length) {
       draw(figure, "quad", columns(other), {
         fill_color: null,
@@ -227,6 +232,34 @@ class Picture {
         hatch_alpha: 0.4,
         hatch_scale: 6,
       });
+    }
+  }
+
+  // The rating in figures, and in words, as soon as a cell has room for it.
+  writeRatings(figure, cells, side) {
+    const data = {
+      x: cells.map(one => (one.left + one.right) / 2),
+      y: cells.map(() => side * (RIBBON + LANES.ribbon / 2)),
+      fill: cells.map(one => (one.level < dark() ? colour("ink") : colour("paper"))),
+    };
+    const style = {
+      text_align: "center",
+      text_baseline: "middle",
+      text_font: colour("figures"),
+      text_font_size: "10.5px",
+      text_color: {field: "fill"},
+      visible: false,
+    };
+    const short = {...data, text: cells.map(one => `${Math.round(one.r)}`)};
+    const long = {...data, text: cells.map(one => `${Math.round(one.r)} ${bandName(one.r)}`)};
+    this.ratings.push([draw(figure, "text", short, style), draw(figure, "text", long, style)]);
+  }
+
+  // Shows as much of the ratings as fits a cell of so many pixels.
+  fitRatings(pixels) {
+    for (const [short, long] of this.ratings) {
+      short.visible = pixels >= ROOM_FOR_FIGURE && pixels < ROOM_FOR_WORDS;
+      long.visible = pixels >= ROOM_FOR_WORDS;
     }
   }
 

@@ -267,6 +267,7 @@ class Tape {
       );
     }
     const {start, end} = this.range;
+    this.picture.fitRatings((width * WINDOW) / (end - start));
     this.slot("shown").textContent =
       end - start > (this.whole[1] - this.whole[0]) * 0.999
         ? `${this.picture.timeOfDay(0)} to ${this.picture.timeOfDay(this.whole[1])}, ${this.view.zone}`

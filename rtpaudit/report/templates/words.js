@@ -86,6 +86,11 @@ function colour(name) {
   return getComputedStyle(document.documentElement).getPropertyValue(`--${name}`).trim();
 }
 
+// From which band on a cell is so dark, or by night so light, that figures in it take the colour of the paper.
+function dark() {
+  return Number(colour("paper-from"));
+}
+
 function colours() {
   return BANDS.map((_, level) => colour(`band-${level}`));
 }
