@@ -115,10 +115,11 @@ def write_folder(
         Where the place cannot be written, or holds anything that rtpaudit did not write.
     """
     tables, captures = audit.tables, audit.assessment.captures
+    calls, cautions, audio_files = audit.assessment.calls, [CAUTION], 0
     if private:
         names = Pseudonyms(new_key(), captures)
         tables, captures = names.tables(tables), [names.file(name) for name in captures]
-    calls, cautions, audio_files = audit.assessment.calls, [CAUTION], 0
+        calls = names.calls(calls)
     waveforms = Waveforms(audit.sound.heard, detail_for(len(calls)).envelope)
     place: Place = "nowhere" if private or not audio else "inside" if single_file else "folder"
     with new_folder(folder) as partial:

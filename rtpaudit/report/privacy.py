@@ -15,9 +15,11 @@ import re
 import secrets
 from bisect import insort
 from collections.abc import Callable, Mapping, Sequence
+from dataclasses import replace
 from ipaddress import ip_address
 from typing import TYPE_CHECKING
 
+from rtpaudit.assess.results import AssessedCall, AssessedStream
 from rtpaudit.signalling.grammar import METHODS
 from rtpaudit.signalling.h248 import COMMANDS
 from rtpaudit.signalling.mgcp import VERBS
@@ -105,6 +107,30 @@ class Pseudonyms:
             for column in [name for name, treatment in columns.items() if treatment == "dropped"]:
                 hidden[table][column] = hidden[table][column].mask(hidden[table][column].notna())
         return hidden
+
+    def calls(self, calls: Sequence[AssessedCall]) -> list[AssessedCall]:
+        """Calls with nothing in their own texts that tells who spoke, once the tables are hidden."""
+
+        def hidden(streams: Sequence[AssessedStream]) -> list[AssessedStream]:
+            notes = (self.words(one.figures.rating_note) for one in streams)
+            return [
+                replace(one, figures=replace(one.figures, rating_note=note))
+                for one, note in zip(streams, notes, strict=True)
+            ]
+
+        return [
+            replace(
+                call,
+                capture=self.file(call.capture),
+                call_id=self.dialog(call.call_id) if call.call_id else "",
+                caller=self.party(call.caller),
+                callee=self.party(call.callee),
+                encoding=self.standard(call.encoding),
+                from_caller=hidden(call.from_caller),
+                from_callee=hidden(call.from_callee),
+            )
+            for call in calls
+        ]
 
     def party(self, name: str) -> str:
         """Pseudonym of a number, name or address, the same for every way of writing an address."""

@@ -1,5 +1,7 @@
 """Privacy: nothing tells who spoke, and still one can see that it was the same party."""
 
+import re
+
 import pandas as pd
 import pytest
 
@@ -96,6 +98,19 @@ def test_digits_and_the_lines_of_messages_go() -> None:
 )
 def test_of_words_from_outside_those_of_standards_are_kept(text: str, kept: str) -> None:
     assert Pseudonyms(KEY, []).standard(text) == kept
+
+
+def test_calls_that_the_page_is_made_of_name_nobody_either() -> None:
+    there = made.stream("s01", "c01")
+    there.figures.rating_note = "G.113 Appendix I has no values for AnnsCodec"
+    call = made.call(
+        "c01", [there], [], caller="Ann", callee="192.0.2.10", call_id="ann@192.0.2.10", encoding="AnnsCodec"
+    )
+    (hidden_call,) = Pseudonyms(KEY, []).calls([call])
+    assert not re.search("ann|192", repr(hidden_call.figures) + repr(hidden_call.streams[0].figures), re.IGNORECASE)
+    told = (hidden_call.caller, hidden_call.callee, hidden_call.call_id, hidden_call.encoding)
+    assert not any(re.search("ann|192", text, re.IGNORECASE) for text in told)
+    assert there.figures.rating_note.endswith("AnnsCodec"), "the audit itself stays as it is"
 
 
 def test_a_made_up_encoding_is_not_named_in_a_sentence_either() -> None:
