@@ -92,9 +92,12 @@ def read_key(path: Path) -> dict[str, KeyRow]:
     except UnicodeDecodeError as fault:
         raise UnusableArguments(f"{path}: is no key of a listening check") from fault
     table = csv.DictReader(text.splitlines())
-    if len(text) > MOST_OCTETS or not set(COLUMNS) <= set(table.fieldnames or ()):
-        raise UnusableArguments(f"{path}: is no key of a listening check; give the {KEY} that `rtpaudit listen` wrote")
-    rows = [_read_row(path, number, row) for number, row in enumerate(table, start=2)]
+    try:
+        if len(text) > MOST_OCTETS or not set(COLUMNS) <= set(table.fieldnames or ()):
+            raise UnusableArguments(f"{path}: is no key of a listening check; give the {KEY} that was written with it")
+        rows = [_read_row(path, number, row) for number, row in enumerate(table, start=2)]
+    except csv.Error as fault:
+        raise UnusableArguments(f"{path}: line {table.line_num}: {fault}") from fault
     if len({row.check for row in rows}) != 1 or len({row.clip for row in rows}) != len(rows):
         raise UnusableArguments(f"{path}: its rows do not belong to one listening check")
     return {row.clip: row for row in rows}

@@ -252,6 +252,21 @@ def test_each_listener_has_an_order_of_their_own(visit: Callable[..., Page], key
     assert all(set(order) == set(key) for order in orders)
 
 
+def test_a_clip_that_was_taken_out_is_told_and_passed_over(browser: Any, place: Path, key: dict[str, KeyRow]) -> None:
+    shutil.copytree(place / "check" / "listeners", place / "thinned")
+    for path in (place / "thinned" / "clips").iterdir():
+        path.unlink()
+    page = browser.new_page()
+    page.goto((place / "thinned" / "rating-sheet.html").as_uri())
+    begin(page, "Gil")
+    page.keyboard.press("Space")
+    page.wait_for_timeout(200)
+    assert "cannot be played" in page.text_content("#said")
+    page.keyboard.press("Enter")
+    assert page.text_content("#which") == "Clip 2 of 3"
+    page.close()
+
+
 @pytest.mark.parametrize("scheme", ["light", "dark"])
 def test_the_sheet_keeps_nobody_out(visit: Callable[..., Page], scheme: str) -> None:
     page = visit(color_scheme=scheme)

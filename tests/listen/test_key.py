@@ -58,3 +58,11 @@ def test_rows_of_two_checks_are_no_key(tmp_path: Path) -> None:
         read_key(written(tmp_path, row(), row("clip-02", check="decaf")))
     with pytest.raises(UnusableArguments, match="do not belong to one"):
         read_key(written(tmp_path, row(), row()))
+
+
+def test_noise_within_a_key_is_refused_with_its_line(tmp_path: Path) -> None:
+    path = written(tmp_path, row(), row("clip-02"))
+    for noise in (b"\0", b'"' + b"x" * 200_000, b"c0ffee,clip-03\n"):
+        (tmp_path / "noisy.csv").write_bytes(path.read_bytes() + noise)
+        with pytest.raises(UnusableArguments, match=r"noisy\.csv: line \d"):
+            read_key(tmp_path / "noisy.csv")

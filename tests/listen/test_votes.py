@@ -118,3 +118,9 @@ def test_names_and_comments_can_be_left_out() -> None:
     assert found.listeners == ["listener 1"]
     assert found.comments == []
     assert found.matrix[0, 0] == 4.0
+
+
+@pytest.mark.parametrize("noise", ["\0", '"' + "x" * 200_000])
+def test_noise_within_a_file_is_refused_with_its_line(tmp_path: Path, noise: str) -> None:
+    with pytest.raises(UnusableArguments, match=r"votes\.csv: line \d"):
+        read(tmp_path, GOOD + noise)
