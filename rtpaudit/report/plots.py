@@ -73,7 +73,7 @@ def windows(one: AssessedStream) -> dict[str, Any]:
         "late": [] if table.packets_discarded is None else table.packets_discarded.tolist(),
         "expected": table.packets_expected.tolist(),
         "jitter": numbers(table.jitter_ms),
-        "pdv": numbers(table.pdv_p95_ms),
+        "level": numbers(table.level_dbov, 0),
     }
     return {name: cells for name, cells in columns.items() if any(cells)} | {"count": len(table.from_s)}
 

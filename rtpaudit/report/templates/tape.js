@@ -319,6 +319,7 @@ class Tape {
           `${lost} lost and ${late} too late of ${windows.expected?.[k] || 0} in 2 s`,
         );
         if (known(windows.jitter?.[k])) told.push(`jitter ${figure(windows.jitter[k])} ms`);
+        if (known(windows.level?.[k])) told.push(`level ${figure(windows.level[k])} dBov`);
       }
       const near = nearest(lane.times, t),
         delay = lane.delays[near];
