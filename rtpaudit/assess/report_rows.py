@@ -71,28 +71,38 @@ def _block_row(one: AssessedStream, far: FarEnd, k: int) -> ReportRow:
 def quality_rows(reports: Sequence[QualityReport], streams: Sequence[AssessedStream]) -> list[ReportRow]:
     """Reports of RFC 6035 on the streams that they speak of; both ways where both are told."""
     rows = []
+    spoken_of = _SpokenOf(streams) if reports else None
     for report in reports:
         ways: list[tuple[MediaEnd, MediaEnd, QualityMetrics | None]] = [
             (report.remote_end, report.local_end, report.local),
             (report.local_end, report.remote_end, report.remote),
         ]
         for sender, receiver, metrics in ways:
-            stream = _spoken_of(sender, receiver, streams) if metrics is not None else None
+            stream = spoken_of.stream(sender, receiver) if metrics is not None and spoken_of else None
             if metrics is not None and stream is not None:
                 rows.append(_quality_row(report, metrics, stream))
     return rows
 
 
-def _spoken_of(sender: MediaEnd, receiver: MediaEnd, streams: Sequence[AssessedStream]) -> AssessedStream | None:
-    """The stream from one end to the other: by SSRC, else by the receiving place, else by the sending one."""
-    if sender.ssrc is not None:
-        mine = [one for one in streams if one.stream.ssrc == sender.ssrc]
-        near = [one for one in mine if receiver.address in ("", one.stream.destination)]
+class _SpokenOf:
+    """Finds the stream that a report speaks of, among thousands."""
+
+    def __init__(self, streams: Sequence[AssessedStream]) -> None:
+        self._by_ssrc: dict[int, list[AssessedStream]] = {}
+        self._to: dict[tuple[str, int], AssessedStream] = {}
+        self._of: dict[tuple[str, int], AssessedStream] = {}
+        for one in streams:
+            self._by_ssrc.setdefault(one.stream.ssrc, []).append(one)
+            self._to.setdefault((one.stream.destination, one.stream.destination_port), one)
+            self._of.setdefault((one.stream.source, one.stream.source_port), one)
+
+    def stream(self, sender: MediaEnd, receiver: MediaEnd) -> AssessedStream | None:
+        """The stream from one end to the other: by SSRC, else by the receiving place, else by the sending one."""
+        mine = self._by_ssrc.get(sender.ssrc, []) if sender.ssrc is not None else []
         if mine:
+            near = [one for one in mine if receiver.address in ("", one.stream.destination)]
             return (near or mine)[0]
-    to = [one for one in streams if (one.stream.destination, one.stream.destination_port) == _place(receiver)]
-    of = [one for one in streams if (one.stream.source, one.stream.source_port) == _place(sender)]
-    return next(iter(to or of), None)
+        return self._to.get(_place(receiver)) or self._of.get(_place(sender))
 
 
 def _place(end: MediaEnd) -> tuple[str, int]:
