@@ -20,6 +20,10 @@ from rtpaudit.units import NS_PER_S
 
 Samples = NDArray[np.int16]
 
+LONGEST_HOLD_NS = 30 * NS_PER_S
+"""what a network may hold packets back; one that seems to come earlier than the others by more has a wrong time"""
+FIRST_PACKETS = 16
+"""by whose clock a stream begins, should the capture's be set later on"""
 LONGEST_TIMELINE_S = 14 * 3600
 """Longer streams keep their figures; their WAV file would pass the 4 GB that its header can count at 48 kHz."""
 
@@ -71,8 +75,15 @@ def lay_out(stream: Stream, skew_ppm: float = float("nan")) -> Laid:
     )
     pace = rate * (1.0 + (0.0 if np.isnan(skew_ppm) else skew_ppm) * 1e-6)
     early = packets.time_ns[rows] - (position * (NS_PER_S / pace)).astype(np.int64)
-    origin_ns = int(early.min()) if len(rows) else int(packets.time_ns[0])
+    origin_ns = int(_sound(early).min()) if len(rows) else int(packets.time_ns[0])
     return Laid(rows, position, rate, origin_ns, *_lay_recovered(stream, rows, position, rate, fits))
+
+
+def _sound(early: NDArray[np.int64]) -> NDArray[np.int64]:
+    """Times of the origin by each packet, without those of a clock that was wrong for a moment, or set later on."""
+    if np.ptp(early) <= LONGEST_HOLD_NS:
+        return early
+    return early[np.abs(early - np.median(early[:FIRST_PACKETS])) <= LONGEST_HOLD_NS]
 
 
 def _lay_recovered(

@@ -70,7 +70,7 @@ class SoundSource:
             [(_at_rate(samples, own, rate), round((at - origin) * rate / NS_PER_S)) for samples, own, at in side]
             for side in sides
         ]
-        length = max(at + len(samples) for side in placed for samples, at in side)
+        length = max(at + len(samples) for side in placed for samples, at in side if at < LONGEST_TIMELINE_S * rate)
         both = np.zeros((min(length, LONGEST_TIMELINE_S * rate), 2), np.int16)
         for column, side in enumerate(placed):
             for samples, at in side:

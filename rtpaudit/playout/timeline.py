@@ -22,6 +22,8 @@ CREEP_SHARE = 0.05
 """of the time passed: a clock further off than this is not the clock of the media"""
 STEADY_S = 0.2
 """disagreement up to which a new segment goes on in the time of the one before"""
+SET_S = 3600.0
+"""between two packets of one run of numbers, though timestamps say otherwise: the capture's clock was set"""
 RECOVERY_PACKETS = 500
 """packets within which a network that held packets back has delivered them"""
 
@@ -138,11 +140,13 @@ def positions(
     timeline, laid at its arrival time relative to the first packet, where the disagreement of timestamp and arrival
     changes by more than ``JUMP_S`` from the packet before, unless the packets that follow take it back (then they had
     been held up on the way); where it adds up to more than ``CREEP_S`` and ``CREEP_SHARE``; and where a new segment
-    does not simply go on in time. It does not begin before the packet before it ends. A lone packet with a stray
-    timestamp does not move those that follow.
+    does not simply go on in time. It does not begin before the packet before it ends, and begins right there where the
+    capture's clock was set back, or on by more than ``SET_S``. A lone packet with a stray timestamp or arrival does not
+    move those that follow.
     """
     if len(media_ticks) == 0:
         return np.empty(0, np.int64)
+    time_ns = _without_stray_times(media_ticks, time_ns, clock_rate_hz)
     steps = np.diff(media_ticks)
     forward = steps[steps > 0]
     usual = int(np.median(forward)) * sampling_rate_hz // clock_rate_hz if len(forward) else 0
@@ -150,6 +154,26 @@ def positions(
     _positions(media_ticks, time_ns, segment, clock_rate_hz, sampling_rate_hz, usual, places)
     places -= places.min()
     return places
+
+
+def _without_stray_times(ticks: Positions, time_ns: Positions, clock_hz: int) -> Positions:
+    """Arrivals, those of lone packets put right that lie apart from both neighbours though their timestamps do not."""
+    if len(ticks) < 3:
+        return time_ns
+    most = JUMP_S * NS_PER_S
+    step = np.diff(ticks) * (NS_PER_S / clock_hz)
+    apart = np.abs(step - np.diff(time_ns)) > most
+    if not apart.any():
+        return time_ns
+    over_two = np.abs(step[1:] + step[:-1] - (time_ns[2:] - time_ns[:-2])) > most
+    stray = np.flatnonzero(apart[1:] & apart[:-1] & ~over_two & (np.abs(step[:-1]) <= most)) + 1
+    put_right = time_ns.copy()
+    put_right[stray] = time_ns[stray - 1] + step[stray - 1].astype(np.int64)
+    if apart[0] and not apart[1] and abs(step[0]) <= most:
+        put_right[0] = time_ns[1] - int(step[0])
+    if apart[-1] and not apart[-2] and abs(step[-1]) <= most:
+        put_right[-1] = time_ns[-2] + int(step[-1])
+    return put_right
 
 
 def span(position: Positions, length: NDArray[np.int64]) -> int:
@@ -229,7 +253,8 @@ def _positions(
                             break
                 if not held_up:
                     place = int(np.floor(elapsed * sampling_hz + 0.5))
-                    if place < end <= place + STEADY_S * sampling_hz:
+                    since = (time_ns[i] - time_ns[i - 1]) / NS_PER_S
+                    if since > SET_S or (place < end and (since < -JUMP_S or end <= place + STEADY_S * sampling_hz)):
                         place = end
                     old, old_leads = piece, leads
                     piece, leads = (ticks[i], place), (lead, lead)

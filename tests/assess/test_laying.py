@@ -4,7 +4,7 @@ import numpy as np
 
 from rtpaudit.assess.laying import lay_out, sent_samples
 from tests.craft import rtp
-from tests.media.datagrams import Datagrams
+from tests.media.datagrams import MS, START_MS, Datagrams, talk
 
 
 def test_two_channels_that_alternate_become_their_mean():
@@ -17,3 +17,23 @@ def test_two_channels_that_alternate_become_their_mean():
     sent = sent_samples(stream, lay_out(stream), [made.packets().octets])
     assert stream.encoding == "L16"
     assert sent.tolist() == ((left + right) // 2).tolist() * 6
+
+
+def test_a_wrong_time_does_not_move_the_origin():
+    for wrong_s in (-86_400, 86_400):
+        made = talk(range(200))
+        at_ms, payload, flow, interface = made.rows[100]
+        made.rows[100] = (at_ms + 1000.0 * wrong_s, payload, flow, interface)
+        (stream,) = made.streams()
+        laid = lay_out(stream)
+        assert laid.position.max() == 199 * 160
+        assert laid.origin_ns == round(START_MS * MS)
+
+
+def test_a_clock_that_was_set_leaves_the_origin_where_the_stream_began():
+    made = talk(range(200))
+    made.rows = [(row[0] + 1e12 * (n >= 60), *row[1:]) for n, row in enumerate(made.rows)]
+    (stream,) = made.streams()
+    laid = lay_out(stream)
+    assert laid.position.max() == 199 * 160
+    assert laid.origin_ns == round(START_MS * MS)

@@ -118,6 +118,21 @@ def test_a_stray_timestamp_does_not_move_those_that_follow():
     assert place(ticks, time_ns).tolist() == expected.tolist()
 
 
+@pytest.mark.parametrize("row", [0, 1, 400, 998, 999])
+@pytest.mark.parametrize("off_s", [-86_400, -60, 60, 86_400])
+def test_a_stray_arrival_does_not_move_anything(row, off_s):
+    ticks, time_ns = steady(1000)
+    time_ns[row] += off_s * 1_000_000_000
+    assert place(ticks, time_ns).tolist() == ticks.tolist()
+
+
+@pytest.mark.parametrize("off_s", [-86_400, 86_400, 50 * 31_556_952])
+def test_a_capture_clock_that_was_set_leaves_the_sound_whole(off_s):
+    ticks, time_ns = steady(1000)
+    time_ns[400:] += off_s * 1_000_000_000
+    assert place(ticks, time_ns).tolist() == ticks.tolist()
+
+
 def test_packets_held_up_for_six_seconds_keep_their_media_time():
     ticks, time_ns = steady(1000)
     time_ns[200:500] = time_ns[500] - np.arange(300, 0, -1) * 10_000
