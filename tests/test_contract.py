@@ -16,7 +16,7 @@ from tests.report import made
 COMMANDS = {"triage", "nightly", "listen", "demo", "explain"}
 TRIAGE_OPTIONS = {
     "--out", "--payload-type", "--delay", "--profile", "--zone", "--private", "--digits", "--quiet", "--json",
-    "--fail-below", "--party", "--at", "--call", "--near", "--excerpt", "--single-file",
+    "--fail-below", "--party", "--at", "--call", "--near", "--excerpt", "--single-file", "--figures-only",
 }  # fmt: skip
 LISTEN_OPTIONS = {
     "--out", "--payload-type", "--delay", "--profile", "--zone", "--private", "--digits", "--quiet", "--json",

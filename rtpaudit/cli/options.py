@@ -37,6 +37,12 @@ Digits = Annotated[bool, typer.Option("--digits", help="Show the digits dialled 
 SingleFile = Annotated[
     bool, typer.Option("--single-file", help="Put all calls and their sound into index.html, to pass it on alone.")
 ]
+FiguresOnly = Annotated[
+    bool,
+    typer.Option(
+        "--figures-only", help="Leave the sound alone: no WAV files, nothing measured in it, many times faster."
+    ),
+]
 Quiet = Annotated[bool, typer.Option("--quiet", help="No summary and no progress.")]
 Json = Annotated[bool, typer.Option("--json", help="The summary on standard output as JSON, and nothing else.")]
 FailBelow = Annotated[

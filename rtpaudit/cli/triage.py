@@ -35,6 +35,7 @@ def triage(
     private: options.Private = False,
     single_file: options.SingleFile = False,
     digits: options.Digits = False,
+    figures_only: options.FiguresOnly = False,
     quiet: options.Quiet = False,
     json: options.Json = False,
     fail_below: options.FailBelow = None,
@@ -55,11 +56,11 @@ def triage(
         refuse_excerpt(excerpt, captures)
     with Bar(shown=not quiet and not json) as bar:
         try:
-            audit = _audit(captures, chosen, given, known_delay, wanted, near, digits, bar, quiet)
+            audit = _audit(captures, chosen, given, known_delay, wanted, near, digits, not figures_only, bar, quiet)
         except NothingChosen as fault:
             raise narrowing.nothing_chosen(fault, where, private) from fault
         passed_on = [] if excerpt is None else audit.excerpt(excerpt)
-        written = _write(audit, folder, private, single_file, where, bar)
+        written = _write(audit, folder, not figures_only, private, single_file, where, bar)
     broken = _below(written, limit)
 
     from rtpaudit.cli.summary import as_json, as_text
@@ -81,6 +82,7 @@ def _audit(
     select: "Selection | None",
     near: str | None,
     digits: bool,
+    sound: bool,
     bar: Bar,
     quiet: bool,
 ) -> "Audit":
@@ -99,14 +101,25 @@ def _audit(
         select=select,
         near=near,
         digits=digits,
+        sound=sound,
         progress=bar.reading,
     )
 
 
-def _write(audit: "Audit", folder: Path, private: bool, single_file: bool, zone: tzinfo | None, bar: Bar) -> "Written":
+def _write(
+    audit: "Audit",
+    folder: Path,
+    sound: bool,
+    private: bool,
+    single_file: bool,
+    zone: tzinfo | None,
+    bar: Bar,
+) -> "Written":
     from rtpaudit.report.folder import write_folder
 
-    return write_folder(audit, folder, private=private, single_file=single_file, zone=zone, progress=bar.writing)
+    return write_folder(
+        audit, folder, audio=sound, private=private, single_file=single_file, zone=zone, progress=bar.writing
+    )
 
 
 def _below(written: "Written", limit: float | None) -> dict[str, float]:

@@ -140,3 +140,12 @@ def test_a_private_report_names_no_address_and_no_file_anywhere(command: Command
     for secret in secrets:
         assert not any(secret.encode() in octets for octets in written), secret
     assert not list((place / "private").rglob("*.wav"))
+
+
+def test_figures_only_leaves_the_sound_alone(command: Command, place: Path) -> None:
+    result = command("triage", str(CAPTURES / TRUTH["file"]), "--figures-only", "--quiet", "--out", "bare")
+    assert result.returncode == 0, result.stderr
+    streams = pd.read_parquet(place / "bare" / "streams.parquet")
+    assert len(streams) == len(TRUTH["streams"])
+    assert streams.speech_level_dbov.isna().all()
+    assert not list((place / "bare").rglob("*.wav"))
