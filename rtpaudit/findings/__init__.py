@@ -10,6 +10,7 @@ from rtpaudit.findings import (  # noqa: F401 (to register their rules)
     buffers,
     capturing,
     coding,
+    dead_air,
     endpoint,
     far_end,
     network,

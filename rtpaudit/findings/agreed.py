@@ -97,7 +97,7 @@ def why_nothing_came(case: Case, missing: Awaited) -> list[str]:
     """What the capture shows that may explain why a side got no media, as clauses."""
     term, other = missing.term, "callee" if missing.by == "caller" else "caller"
     reasons = []
-    if is_private(term.address) and not all(is_private(one) for one in _seen_hosts(case, missing.by)):
+    if is_private(term.address) and not any(is_private(one) for one in _seen_hosts(case, missing.by)):
         reasons.append(f"the {missing.by} announced a private address, which the {other} cannot reach")
     if _refused(case, term):
         reasons.append(f"a host answered that the {missing.by}'s port is unreachable")

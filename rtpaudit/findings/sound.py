@@ -8,20 +8,14 @@ import numpy as np
 from rtpaudit.assess.hearing import StreamSound
 from rtpaudit.audio.echo import Echo
 from rtpaudit.audio.level import SILENCE_DBOV, dbm0
-from rtpaudit.audio.silence import Passage
 from rtpaudit.emodel.g107 import rating
 from rtpaudit.findings.agreed import suppresses_silence
 from rtpaudit.findings.case import Case
-from rtpaudit.findings.facts import StreamFacts, is_cut
-from rtpaudit.findings.numbering import keeps_no_time
-from rtpaudit.findings.rule import COMMON_PRACTICE, ENDPOINT, UNKNOWN, Evidence, rule
-from rtpaudit.findings.words import ms, number, pct, seconds, times
+from rtpaudit.findings.facts import StreamFacts
+from rtpaudit.findings.rule import COMMON_PRACTICE, ENDPOINT, Evidence, rule
+from rtpaudit.findings.words import ms, number, pct
 from rtpaudit.planning import PARAMETERS
-from rtpaudit.units import NS_PER_S
 
-MOSTLY_PCT = 80.0
-DEAD_DBOV = -68.0
-"""of a whole stream: A-law's own silence is at -72 dBov"""
 LEAST_SPEECH_DBOV = -62.0
 LEAST_SPEECH_S = 2.0
 ABOVE_NOISE_DB = 12.0
@@ -122,7 +116,7 @@ def level_unequal(case: Case, limit: float) -> Iterator[Evidence]:
 )  # fmt: skip
 def clipping(case: Case, limit: float) -> Iterator[Evidence]:
     """Peaks cut off."""
-    for facts, sound in _sounds(case):
+    for facts, sound in sounds_of(case):
         found = sound.clipping
         ceiling = found.at_ceiling_pct if found.confidence_pct >= SURE_PCT else 0.0
         share = max(np.nan_to_num(found.clipped_pct), ceiling)
@@ -152,7 +146,7 @@ def clipping(case: Case, limit: float) -> Iterator[Evidence]:
 )  # fmt: skip
 def noise(case: Case, limit: float) -> Iterator[Evidence]:
     """Noise in the pauses."""
-    for facts, sound in _sounds(case):
+    for facts, sound in sounds_of(case):
         level = sound.noise_dbov
         hum_level = sound.hum.level_dbov if sound.hum is not None else -np.inf
         # Speech all along, and music, have no pauses that could be told.
@@ -185,7 +179,7 @@ def noise(case: Case, limit: float) -> Iterator[Evidence]:
 )  # fmt: skip
 def hum(case: Case, limit: float) -> Iterator[Evidence]:
     """Mains hum."""
-    for facts, sound in _sounds(case):
+    for facts, sound in sounds_of(case):
         found = sound.hum
         if found is None or found.level_dbov <= limit or found.confidence_pct < SURE_PCT:
             continue
@@ -199,69 +193,6 @@ def hum(case: Case, limit: float) -> Iterator[Evidence]:
             at_least="fault" if found.level_dbov > limit + 15 else "concern",
             gravity=25.0 + found.level_dbov - limit,
         )
-
-
-@rule(
-    "dead-air", group="sound", limit=5.0, unit="s", basis=COMMON_PRACTICE,
-    means="Packets came, and there was nothing in them: a side was muted, its microphone dead, or something on the way "
-    "replaced its sound by silence.",
-    measured_as="time in which neither side had any sound (below -65 dBov), in which one side fell from its usual "
-    "noise to digital silence, or the whole stream where it never had any",
-    check_next="Ask whether somebody had muted or was on hold; otherwise look at the microphone, and at what "
-    "bridges the call.",
-    severity="a fault where a side was silent all along or both fell silent, else a concern",
-)  # fmt: skip
-def dead_air(case: Case, limit: float) -> Iterator[Evidence]:
-    """Packets without sound."""
-    silent = [facts for facts, sound in _sounds(case) if _never_sounds(facts, sound) and not is_cut(facts)]
-    for facts in silent:
-        if facts.duration_s < limit:
-            continue
-        yield Evidence(
-            measured=facts.duration_s,
-            says=f"The {case.listener(facts)} heard nothing: all {seconds(facts.duration_s)} of packets from the "
-            f"{case.talker(facts)} hold silence.",
-            stream=facts.id,
-            where=ENDPOINT,
-            confidence_pct=90.0,
-            at_least="fault",
-            gravity=85.0,
-        )
-    if silent:
-        return
-    both = [one for one in _dead_together(case) if one.duration_s >= limit]
-    if both and case.call.sound is not None:
-        origin = case.seconds(case.call.sound.from_ns)
-        longest = max(one.duration_s for one in both)
-        yield Evidence(
-            measured=longest,
-            says=f"Neither side had any sound {times(len(both))}, for {seconds(longest)} at the longest: the line "
-            "was dead.",
-            where=UNKNOWN,
-            confidence_pct=75.0,
-            from_s=origin + both[0].from_s,
-            to_s=origin + both[-1].to_s,
-            at_least="fault",
-            gravity=40.0,
-        )
-        return
-    for facts, sound in _sounds(case):
-        mute = [one for one in sound.dead_air if one.duration_s >= limit and _goes_mute(sound, one)]
-        if mute:
-            longest = max(one.duration_s for one in mute)
-            yield Evidence(
-                measured=longest,
-                says=f"The sound of the {case.talker(facts)} fell silent {times(len(mute))}, without even the noise "
-                f"it has otherwise, for {seconds(longest)} at the longest.",
-                stream=facts.id,
-                where=ENDPOINT,
-                confidence_pct=60.0,
-                from_s=case.seconds(sound.origin_ns) + mute[0].from_s,
-                to_s=case.seconds(sound.origin_ns) + mute[-1].to_s,
-                at_least="concern",
-                at_most="concern",
-                gravity=15.0,
-            )
 
 
 @rule(
@@ -299,7 +230,7 @@ def echo(case: Case, limit: float) -> Iterator[Evidence]:
         )
 
 
-def _sounds(case: Case) -> list[tuple[StreamFacts, StreamSound]]:
+def sounds_of(case: Case) -> list[tuple[StreamFacts, StreamSound]]:
     """Streams of a call whose sound was measured."""
     return [(facts, facts.assessed.sound) for facts in case.streams if facts.assessed.sound is not None]
 
@@ -307,7 +238,7 @@ def _sounds(case: Case) -> list[tuple[StreamFacts, StreamSound]]:
 def _speech_levels(case: Case) -> list[tuple[StreamFacts, float]]:
     """Active speech level of each stream that holds speech well above its noise. [dBov]"""
     found = []
-    for facts, sound in _sounds(case):
+    for facts, sound in sounds_of(case):
         level = sound.level.active_dbov
         spoken_s = sound.level.activity_pct / 100.0 * sound.scanned.samples / sound.rate_hz
         above = level - (SILENCE_DBOV if np.isnan(sound.noise_dbov) else sound.noise_dbov)
@@ -318,35 +249,6 @@ def _speech_levels(case: Case) -> list[tuple[StreamFacts, float]]:
             and not sound.steady_tones
         ):
             found.append((facts, level))
-    return found
-
-
-def _never_sounds(facts: StreamFacts, sound: StreamSound) -> bool:
-    """Whether a stream holds nothing but silence from its first packet to its last."""
-    signs = facts.assessed.signs
-    idle = signs.idle if signs is not None else None
-    return (idle is not None and idle.whole_call) or sound.level.long_term_dbov < DEAD_DBOV
-
-
-def _goes_mute(sound: StreamSound, passage: Passage) -> bool:
-    """Whether a passage holds digital silence in packets while the stream has noise otherwise."""
-    return passage.received_pct > 90.0 and passage.level_dbov < -90.0 and sound.noise_dbov > -80.0
-
-
-def _dead_together(case: Case) -> list[Passage]:
-    """Passages of the talk in which neither side had any sound though packets came."""
-    sound, said = case.call.sound, case.call.signalled
-    if sound is None or any(is_cut(facts) or keeps_no_time(facts) for facts in case.streams):
-        return []
-    answered = case.call.started_ns if case.call.answered_ns is None else case.call.answered_ns
-    found = []
-    for one in sound.dead_air:
-        begin, end = (sound.from_ns + round(at * NS_PER_S) for at in (one.from_s, one.to_s))
-        held = said is not None and any(
-            hold.from_ns <= begin + NS_PER_S and (hold.until_ns is None or begin < hold.until_ns) for hold in said.holds
-        )
-        if one.received_pct >= MOSTLY_PCT and not held and begin >= answered and end <= case.heard_until_ns + NS_PER_S:
-            found.append(one)
     return found
 
 
