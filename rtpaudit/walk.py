@@ -290,6 +290,15 @@ def _listen_to(
         interfaces=tuple(one for file in recording.files for one in file.interfaces),
         unreachable=tuple(errors),
         skipped=dict(decoder.skipped),
+        ssrcs=frozenset(stream.ssrc for stream in streams if stream.media == "audio"),
+        last_ns=max(
+            [
+                *(int(stream.packets.time_ns.max()) for stream in streams),
+                *(message.time_ns for message in said.messages),
+                *(call.ended_ns for call in said.calls),
+            ],
+            default=0,
+        ),
     )
     return Heard(
         recording=recording,

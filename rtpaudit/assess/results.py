@@ -211,6 +211,10 @@ class RecordingFacts:
     """ICMP errors on UDP: who refused what"""
     skipped: Mapping[str, int] = field(default_factory=dict)
     """frames that carried no UDP, TCP or ICMP, by reason"""
+    ssrcs: frozenset[int] = frozenset()
+    """of all audio streams, also where the audit was narrowed to a few"""
+    last_ns: int = 0
+    """last sign of life of any stream, call or message, likewise"""
 
 
 @dataclass(slots=True)

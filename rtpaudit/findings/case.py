@@ -70,24 +70,9 @@ class Whole:
 
     def last_ns(self, case: "Case") -> int:
         """Last sign of life of anything in the recording of a call."""
-        of_streams, of_capture = self._last_ns
-        times = [of_streams[number] for number in case.recordings if number in of_streams]
-        return max([*times, of_capture.get(case.call.capture, case.call.ended_ns)])
-
-    @cached_property
-    def _last_ns(self) -> tuple[dict[int, int], dict[str, int]]:
-        """Last sign of life of streams by recording, of calls and messages by capture."""
-        of_streams: dict[int, int] = {}
-        for stream in self.assessment.streams:
-            number = stream.stream.recording
-            of_streams[number] = max(of_streams.get(number, 0), stream.ended_ns)
-        of_capture: dict[str, int] = {}
-        for capture, time_ns in (
-            *((call.capture, call.ended_ns) for call in self.assessment.calls),
-            *((row.capture, row.time_ns) for row in self.assessment.messages),
-        ):
-            of_capture[capture] = max(of_capture.get(capture, 0), time_ns)
-        return of_streams, of_capture
+        recordings = self.assessment.recordings
+        known = [recordings[number].last_ns for number in case.recordings if number < len(recordings)]
+        return max([case.call.ended_ns, *(one.assessed.ended_ns for one in case.streams), *known])
 
     def events_of(self, facts: StreamFacts) -> list[EventRow]:
         """Telephone events that a stream carried."""
@@ -108,8 +93,9 @@ class Whole:
 
     @cached_property
     def ssrcs(self) -> frozenset[int]:
-        """Of all audio streams."""
-        return frozenset(one.stream.ssrc for one in self.audio)
+        """Of all audio streams, also of those that the audit was not narrowed to."""
+        own = frozenset(one.stream.ssrc for one in self.audio)
+        return own.union(*(one.ssrcs for one in self.assessment.recordings))
 
     @cached_property
     def by_source(self) -> dict[tuple[int, str], list[StreamFacts]]:

@@ -1,18 +1,23 @@
 """Lost packets that came within others: counted, rated and heard, or too late, by hand."""
 
+import re
 from dataclasses import replace
+from pathlib import Path
 
 import numpy as np
 import pytest
 
+import rtpaudit
 from rtpaudit.assess.ear import heard_samples
 from rtpaudit.assess.laying import lay_out, sent_samples
 from rtpaudit.assess.stream import Measured, measure
 from rtpaudit.codecs.g711 import decode_pcmu
 from rtpaudit.media.streams import Stream
 from rtpaudit.profile import Playout, Profile
+from rtpaudit.signalling.payload_types import encoding
+from tests.crafted_calls import Made, capture
 from tests.media.datagrams import Datagrams
-from tests.media.test_redundancy import GIVEN, content_of, redundant
+from tests.media.test_redundancy import GIVEN, content_of, red, redundant
 
 PLAIN = Profile()
 
@@ -102,3 +107,32 @@ def test_what_came_too_late_is_not_heard() -> None:
         )
         # 127 is silence in mu-law.
         assert [k for k in range(150) if not heard[160 * k : 160 * (k + 1)].any()] == sorted([*silent, 127])
+
+
+@pytest.mark.parametrize("told", ["offer", "given"])
+def test_a_whole_audit_of_a_capture_with_redundancy(tmp_path: Path, told: str) -> None:
+    call = Made(1, seconds=3.0)
+    datagrams = []
+    for one in call.all():
+        payload = one.payload
+        if told == "offer" and b"RTP/AVP 0 101" in payload:
+            head, _, body = payload.partition(b"\r\n\r\n")
+            body = body.replace(b"AVP 0 101", b"AVP 121 0 101") + b"a=rtpmap:121 red/8000\r\na=fmtp:121 0/0\r\n"
+            payload = re.sub(rb"Content-Length: \d+", b"Content-Length: %d" % len(body), head) + b"\r\n\r\n" + body
+        if one.source[1] == call.ports[0]:
+            number = int.from_bytes(payload[2:4], "big")
+            copies = red((0, payload[12:]), (0, 160, content_of(number - 1)))
+            payload = payload[:1] + bytes([121]) + payload[2:12] + copies
+            if number in (50, 51, 80):
+                continue
+        datagrams.append(one._replace(payload=payload))
+    (tmp_path / "made.pcap").write_bytes(capture(datagrams))
+    given = {121: encoding("red", 8000)} if told == "given" else {}
+    audit = rtpaudit.audit(tmp_path / "made.pcap", payload_types=given)
+    row = audit.streams[audit.streams.source_port == call.ports[0]].iloc[0]
+    assert (row.encoding, row.payload_type, row.packets_lost, row.packets_recovered) == ("PCMU", 0, 3, 2)
+    windows = audit.windows[audit.windows.stream == row.stream]
+    assert windows.packets_lost.sum() == 3
+    sent = audit.samples(row.stream)
+    assert not sent[50 * 160 : 51 * 160].any(), "its copy was lost with the packet after it"
+    assert np.array_equal(sent[51 * 160 : 52 * 160], decode_pcmu(np.frombuffer(content_of(51), np.uint8)))
