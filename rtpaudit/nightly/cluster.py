@@ -49,7 +49,8 @@ class DaskCluster:
         if not self._pieces:
             return []
         try:
-            done = wait(list(self._pieces), timeout=timeout_s, return_when="FIRST_COMPLETED").done
+            with self._client.as_current():
+                done = wait(list(self._pieces), timeout=timeout_s, return_when="FIRST_COMPLETED").done
         except distributed.TimeoutError:
             return []
         return [self._take(future) for future in done]

@@ -13,6 +13,7 @@ from collections import deque
 from collections.abc import Callable
 from dataclasses import dataclass, field
 from datetime import tzinfo
+from importlib import import_module
 from multiprocessing import get_context
 from multiprocessing.connection import Connection, wait
 from typing import Any, Protocol
@@ -26,6 +27,9 @@ AHEAD = 2
 
 READY = -1
 """What a worker says first; what it says later are places of captures, results, and sentences where all went wrong."""
+
+START_S = 300.0
+"""A process that has not begun by then, compiling included, never will."""
 
 LEAST_TIME_S, TIME_PER_OCTET_S = 600.0, 1e-6
 """A capture may take ten minutes and a second more for each megabyte. Our own."""
@@ -185,6 +189,8 @@ class LocalProcesses:
 
 
 def _overdue(worker: _Worker) -> bool:
+    if not worker.ready:
+        return time.monotonic() - worker.since > START_S
     task = worker.pieces[0].tasks[worker.place or 0]
     return time.monotonic() - worker.since > LEAST_TIME_S + TIME_PER_OCTET_S * task.found.size
 
@@ -212,6 +218,7 @@ def serve(
     signal.signal(signal.SIGINT, signal.SIG_IGN)
     os.umask(0o077)
     threading.Thread(target=_watch, args=(parent,), daemon=True).start()
+    _load()
     limit_memory(memory_octets or settings.memory_octets)
     line.send(READY)
     while True:
@@ -237,15 +244,27 @@ def _watch(parent: int) -> None:
     os._exit(1)
 
 
+def _load() -> None:
+    """Load what the work takes, so that it does not count as memory of a capture."""
+    # Arrow's own allocators take hold of far more than they use.
+    os.environ["ARROW_DEFAULT_MEMORY_POOL"] = "system"
+    for name in ("pandas", "pyarrow.parquet", "rtpaudit.report.tables", "rtpaudit.walk"):
+        import_module(name)
+
+
 def limit_memory(octets: int | None) -> None:
-    """Let this process take no more memory than so much for itself; what maps a file does not count."""
+    """Let this process take only so much more memory for itself than it has now; what maps a file does not count."""
     if octets is None or sys.platform != "linux":
         return
     import resource
 
-    _, most = resource.getrlimit(resource.RLIMIT_DATA)
-    limit = octets if most == resource.RLIM_INFINITY else min(octets, most)
-    resource.setrlimit(resource.RLIMIT_DATA, (limit, most))
+    limit, (_, most) = _taken_octets() + octets, resource.getrlimit(resource.RLIMIT_DATA)
+    resource.setrlimit(resource.RLIMIT_DATA, (limit if most == resource.RLIM_INFINITY else min(limit, most), most))
+
+
+def _taken_octets() -> int:
+    """What this process has taken, by the system's own count."""
+    return _kilobytes("/proc/self/status", "VmData:") * 1024
 
 
 def memory_shares(count: int) -> tuple[int | None, int | None]:
@@ -258,14 +277,17 @@ def memory_shares(count: int) -> tuple[int | None, int | None]:
 
 
 def _available_octets() -> int | None:
+    return _kilobytes("/proc/meminfo", "MemAvailable:") * 1024 or None
+
+
+def _kilobytes(path: str, name: str) -> int:
+    """A line of a file that the system makes up, 0 where there is none."""
     try:
-        with open("/proc/meminfo", encoding="ascii") as file:
-            for text in file:
-                if text.startswith("MemAvailable:"):
-                    return int(text.split()[1]) * 1024
+        with open(path, encoding="ascii", errors="replace") as file:
+            found = [text.split()[1] for text in file if text.startswith(name)]
     except OSError:
-        return None
-    return None
+        return 0
+    return int(found[0]) if found else 0
 
 
 def cores() -> int:

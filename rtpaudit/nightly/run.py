@@ -20,7 +20,7 @@ from rtpaudit.nightly.sampling import Sampling
 from rtpaudit.nightly.settings import NAMES_KEPT, NAMES_KEYED, AuditSettings
 from rtpaudit.nightly.sources import SETTLE_S, Found, list_sources
 from rtpaudit.nightly.store import Store
-from rtpaudit.nightly.worker import Task, examine
+from rtpaudit.nightly.worker import Piece, Task, examine
 from rtpaudit.nightly.worst import WORST, report_pieces, write_reports
 from rtpaudit.profile import Profile
 
@@ -179,20 +179,22 @@ def _report_worst(
     options: Options, store: Store, settings: AuditSettings, nights: Sequence[date], at: Mapping[str, Found]
 ) -> int:
     """Write the reports of the worst calls of each night that grew, on this machine; how many can not be written."""
+    todo: list[Piece] = []
     missing = 0
     for night in nights:
         pieces, without = report_pieces(store, read_night(store, night), at, options.reports, options.with_sound)
+        todo += pieces
         missing += without
-        if not pieces:
-            continue
-        engine = LocalProcesses(min(_workers(options), len(pieces)), write_reports, settings, options.zone)
-        try:
-            todo, at_work = list(pieces), 0
-            while todo or at_work:
-                while todo and engine.room > 0:
-                    engine.submit(todo.pop())
-                    at_work += 1
-                at_work -= len(engine.gather(1.0))
-        finally:
-            engine.close()
+    if not todo:
+        return missing
+    engine = LocalProcesses(min(_workers(options), len(todo)), write_reports, settings, options.zone)
+    at_work = 0
+    try:
+        while todo or at_work:
+            while todo and engine.room > 0:
+                engine.submit(todo.pop())
+                at_work += 1
+            at_work -= len(engine.gather(1.0))
+    finally:
+        engine.close()
     return missing
