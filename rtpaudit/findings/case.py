@@ -130,7 +130,7 @@ class Case:
         """Note what a tier left."""
         self._left[facts.id] = left
 
-    @property
+    @cached_property
     def streams(self) -> list[StreamFacts]:
         """Both directions, in id order."""
         return sorted(self.from_caller + self.from_callee, key=lambda one: int(one.id[1:]))
