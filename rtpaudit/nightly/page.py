@@ -167,7 +167,12 @@ def _table(morning: Morning, dimension: str) -> dict[str, Any]:
         count = morning.summary.calls.get(group, 0)
         rows.append({"name": "all" if group.dimension == ALL else group.name, "calls": f"{count:,}",
                      "few": count < FEW_CALLS, "cells": cells})  # fmt: skip
-    return {"heading": HEADINGS[dimension], "columns": [one.label for one in MEASURES], "rows": rows}
+    return {
+        "heading": HEADINGS[dimension],
+        "column": dimension.capitalize(),
+        "columns": [one.label for one in MEASURES],
+        "rows": rows,
+    }
 
 
 def _cell(morning: Morning, group: Group, measure: Measure, change: Change | None) -> dict[str, str]:
