@@ -5,7 +5,7 @@ from collections.abc import Iterator
 import numpy as np
 
 from rtpaudit.assess.hearing import StreamSound
-from rtpaudit.audio.silence import Passage
+from rtpaudit.assess.pairs import CallSound
 from rtpaudit.findings.case import Case
 from rtpaudit.findings.facts import StreamFacts, is_cut
 from rtpaudit.findings.numbering import keeps_no_time
@@ -51,24 +51,26 @@ def dead_air(case: Case, limit: float) -> Iterator[Evidence]:
         )
     if silent:
         return
-    both = [one for one in _dead_together(case) if one.duration_s >= limit]
-    if both and case.call.sound is not None:
-        origin = case.seconds(case.call.sound.from_ns)
-        longest = max(one.duration_s for one in both)
+    talk = case.call.sound
+    both = [] if talk is None else _dead_together(case, talk, limit)
+    if both and talk is not None:
+        origin = case.seconds(talk.from_ns)
+        longest = max(end - begin for begin, end in both)
         yield Evidence(
             measured=longest,
             says=f"Neither side had any sound {times(len(both))}, for {seconds(longest)} at the longest: the line "
             "was dead.",
             where=UNKNOWN,
             confidence_pct=75.0,
-            from_s=origin + both[0].from_s,
-            to_s=origin + both[-1].to_s,
+            from_s=origin + both[0][0],
+            to_s=origin + both[-1][1],
             at_least="fault",
             gravity=40.0,
         )
         return
     for facts, sound in sounds_of(case):
-        mute = [] if is_cut(facts) else _mute_passages(sound, limit)
+        silences = [] if is_cut(facts) else _mute_passages(sound, limit)
+        mute = [piece for one in silences for piece in _off_hold(case, sound.origin_ns, *one, limit)]
         if mute:
             longest = max(end - begin for begin, end in mute)
             yield Evidence(
@@ -108,18 +110,25 @@ def _mute_passages(sound: StreamSound, least_s: float) -> list[tuple[float, floa
     return list(zip(begin[lasts].tolist(), end[lasts].tolist(), strict=True))
 
 
-def _dead_together(case: Case) -> list[Passage]:
-    """Passages of the talk in which neither side had any sound though packets came."""
-    sound, said = case.call.sound, case.call.signalled
-    if sound is None or any(is_cut(facts) or keeps_no_time(facts) for facts in case.streams):
+def _dead_together(case: Case, sound: CallSound, least_s: float) -> list[tuple[float, float]]:
+    """Begin and end of passages of the talk in which neither side had any sound though packets came. [s]"""
+    if any(is_cut(facts) or keeps_no_time(facts) for facts in case.streams):
         return []
     answered = case.call.started_ns if case.call.answered_ns is None else case.call.answered_ns
     found = []
     for one in sound.dead_air:
         begin, end = (sound.from_ns + round(at * NS_PER_S) for at in (one.from_s, one.to_s))
-        held = said is not None and any(
-            hold.from_ns <= begin + NS_PER_S and (hold.until_ns is None or begin < hold.until_ns) for hold in said.holds
-        )
-        if one.received_pct >= MOSTLY_PCT and not held and begin >= answered and end <= case.heard_until_ns + NS_PER_S:
-            found.append(one)
+        if one.received_pct >= MOSTLY_PCT and begin >= answered and end <= case.heard_until_ns + NS_PER_S:
+            found += _off_hold(case, sound.from_ns, one.from_s, one.to_s, least_s)
     return found
+
+
+def _off_hold(case: Case, origin_ns: int, from_s: float, to_s: float, least_s: float) -> list[tuple[float, float]]:
+    """What is left of a passage outside the times that the signalling says were spent on hold, as far as it lasts."""
+    left, begin_s = [], from_s
+    for hold in sorted(case.call.signalled.holds if case.call.signalled else (), key=lambda one: one.from_ns):
+        until_ns = case.call.ended_ns if hold.until_ns is None else hold.until_ns
+        held_s, resumed_s = ((at - origin_ns) / NS_PER_S for at in (hold.from_ns, until_ns))
+        left.append((begin_s, min(to_s, max(held_s, begin_s))))
+        begin_s = min(to_s, max(resumed_s, begin_s))
+    return [(begin, end) for begin, end in [*left, (begin_s, to_s)] if end - begin >= least_s]

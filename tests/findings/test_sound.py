@@ -11,6 +11,7 @@ from rtpaudit.emodel.g107 import rating
 from rtpaudit.findings.rule import Finding
 from rtpaudit.planning import PlanningValues
 from tests.findings.made import Line, back, found, only
+from tests.findings.sip import Said
 from tests.sources import ROOT
 
 RATE = 8000
@@ -122,6 +123,17 @@ def silent(sound: np.ndarray, seconds: float) -> np.ndarray:
 def test_a_line_that_goes_dead_both_ways_counts_from_five_seconds(seconds, there) -> None:
     findings = heard(line(silent(speech(), seconds)), other(silent(np.roll(speech("guest"), 6 * RATE), seconds)))
     assert [one.finding for one in findings] == ["dead-air"] * there
+
+
+@pytest.mark.parametrize(("changes", "there"), [
+    ([], True),
+    ([(4500.0, "sendonly"), (9500.0, "sendrecv")], False),
+    ([(4500.0, "sendonly"), (5000.0, "sendrecv")], True),
+])  # fmt: skip
+def test_silence_on_hold_is_no_dead_line(changes, there) -> None:
+    said = Said(changes=changes, bye_ms=16_100.0).frames()
+    both = line(silent(speech(), 6.5)), other(silent(np.roll(speech("guest"), 6 * RATE), 6.5))
+    assert ("dead-air" in [one.finding for one in heard(said, *both)]) is there
 
 
 def test_one_side_that_goes_mute_is_a_concern() -> None:
