@@ -50,6 +50,11 @@ def silence_reason(stream: Stream) -> str:
         return f"{stream.media} is not decoded"
     if stream.encrypted:
         return "encrypted"
+    if stream.encoding == "unknown":
+        number = stream.payload_type
+        return (
+            f"nothing tells what payload type {number} is; --payload-type {number}=NAME/CLOCK does, as in 96=G722/8000"
+        )
     try:
         codec_of(stream.encoding)
     except MissingCodec as fault:

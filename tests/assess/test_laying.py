@@ -2,7 +2,7 @@
 
 import numpy as np
 
-from rtpaudit.assess.laying import lay_out, sent_samples
+from rtpaudit.assess.laying import lay_out, sent_samples, silence_reason
 from tests.craft import rtp
 from tests.media.datagrams import MS, START_MS, Datagrams, talk
 
@@ -37,3 +37,11 @@ def test_a_clock_that_was_set_leaves_the_origin_where_the_stream_began():
     laid = lay_out(stream)
     assert laid.position.max() == 199 * 160
     assert laid.origin_ns == round(START_MS * MS)
+
+
+def test_an_unknown_payload_type_says_how_to_name_it():
+    made = Datagrams()
+    for n in range(20):
+        made.add(20.0 * n, rtp(bytes(70), n, 960 * n, payload_type=111))
+    (stream,) = made.streams()
+    assert "--payload-type 111=" in silence_reason(stream)
