@@ -158,6 +158,8 @@ class LocalProcesses:
         except Exception:
             self._lose(worker, _ended(worker.process))
             return []
+        if not worker.ready and said != READY:
+            raise RtpAuditError(f"no worker process could begin its work: {said}")
         worker.since, worker.ready = time.monotonic(), True
         if isinstance(said, int):
             worker.place = said if said != READY else None
@@ -218,8 +220,13 @@ def serve(
     signal.signal(signal.SIGINT, signal.SIG_IGN)
     os.umask(0o077)
     threading.Thread(target=_watch, args=(parent,), daemon=True).start()
-    _load()
-    limit_memory(memory_octets or settings.memory_octets)
+    try:
+        _load()
+        limit_memory(memory_octets or settings.memory_octets)
+    # Whatever it is, whoever started this process is to hear of it in one sentence.
+    except Exception as fault:
+        line.send(f"{type(fault).__name__}: {fault}")
+        return
     line.send(READY)
     while True:
         try:

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections import defaultdict
-from collections.abc import Mapping, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass, field
 from datetime import tzinfo
 from typing import TYPE_CHECKING, Any
@@ -15,11 +15,14 @@ from rtpaudit.nightly.names import hide_names
 from rtpaudit.nightly.routing import Router, Way
 from rtpaudit.nightly.schema import NIGHT, arrow_schema
 from rtpaudit.nightly.settings import AuditSettings
+from rtpaudit.report.tables import Columns, build_frame, table_columns
 
 if TYPE_CHECKING:
     import pyarrow as pa
     from pandas import DataFrame, Series
 
+    from rtpaudit.assess.results import AssessedCall
+    from rtpaudit.assess.rows import SignallingRow
     from rtpaudit.walk import Audit
 
 _BY_STREAM = ("gaps", "windows")
@@ -55,7 +58,8 @@ class PieceRows:
     zone: tzinfo | None
     router: Router = field(init=False)
     facts: list[Facts] = field(default_factory=list)
-    _frames: dict[str, list[DataFrame]] = field(default_factory=lambda: defaultdict(list))
+    _parts: dict[str, list[Columns]] = field(default_factory=lambda: defaultdict(list))
+    _routes: list[Any] = field(default_factory=list)
     _owners: dict[str, list[int]] = field(default_factory=lambda: defaultdict(list))
 
     def __post_init__(self) -> None:
@@ -67,25 +71,30 @@ class PieceRows:
 
     def add(self, facts: Facts, audit: Audit | None) -> None:
         """One capture; without an audit where it failed."""
-        tables = {} if audit is None else self._with_routes(audit)
-        if audit is not None:
-            facts.packets = int(tables["streams"]["packets_captured"].sum())
-            facts.streams, facts.calls = len(tables["streams"]), len(tables["calls"])
-            if facts.streams:
-                facts.started_ns = min(one.started_ns for one in audit.assessment.streams)
+        if audit is None:
+            self.facts.append(facts)
+            return
+        found = audit.assessment
+        columns = table_columns(found, audit.diagnosis, found.messages, found.events, found.reports)
+        routes = self._route_of(columns["calls"]["call"], audit)
+        facts.packets = sum(columns["streams"]["packets_captured"])
+        facts.streams, facts.calls = len(found.streams), len(found.calls)
+        if facts.streams:
+            facts.started_ns = min(one.started_ns for one in found.streams)
         self.facts.append(facts)
-        for name, frame in tables.items():
-            if len(frame) or not self._frames[name]:
-                self._frames[name].append(frame)
-                self._owners[name].append(len(self.facts) - 1)
+        self._routes += routes
+        for name, part in columns.items():
+            self._parts[name].append(part)
+            self._owners[name].append(len(self.facts) - 1)
 
     def finish(self) -> dict[str, pa.Table]:
         """All tables of the piece."""
         import pandas as pd
 
-        tables = {name: self._joined(name) for name in self._frames}
+        tables = {name: self._joined(name) for name in self._parts}
         tables["captures"] = _captures(self.facts)
         if "calls" in tables:
+            tables["calls"]["route"] = pd.array([one or pd.NA for one in self._routes], dtype="string")
             tables["calls"]["discard_pct"] = _worst_discards(tables["calls"], tables["streams"])
             _place_in_nights(tables, self.zone)
             hidden = hide_names(tables, self.settings.names, self.settings.key, self.settings.digits)
@@ -98,39 +107,30 @@ class PieceRows:
     def _joined(self, name: str) -> DataFrame:
         import pandas as pd
 
-        frames = self._frames[name]
-        frame = pd.concat(frames, ignore_index=True) if len(frames) > 1 else frames[0]
-        counts = [len(one) for one in frames]
+        frame = build_frame(name, self._parts[name])
+        counts = [len(next(iter(one.values()))) for one in self._parts[name]]
         ids = pd.array([self.facts[owner].capture_id for owner in self._owners[name]], dtype="string")
         return frame.assign(capture_id=ids.repeat(counts), _owner=np.repeat(self._owners[name], counts))
 
-    def _with_routes(self, audit: Audit) -> dict[str, DataFrame]:
-        tables = dict(audit.tables)
-        return tables | {"calls": tables["calls"].assign(route=self._routes(audit, tables))}
-
-    def _routes(self, audit: Audit, tables: Mapping[str, DataFrame]) -> Any:
-        import pandas as pd
-
+    def _route_of(self, calls: Sequence[str], audit: Audit) -> list[str]:
         if not self.router.routes:
-            return pd.array([pd.NA] * len(tables["calls"]), dtype="string")
-        said: dict[str, list[Any]] = defaultdict(list)
-        if self.router.reads_signalling or len(tables["signalling"]):
-            for row in tables["signalling"][["call", "from", "to", "line"]].dropna(subset=["call"]).values.tolist():
-                said[row[0]].append(row[1:])
-        names = [self.router.route(_way(call, said[call.id])) for call in audit.assessment.calls]
-        by_call = dict(zip((call.id for call in audit.assessment.calls), names, strict=True))
-        return pd.array([by_call[call] or pd.NA for call in tables["calls"]["call"]], dtype="string")
+            return [""] * len(calls)
+        said: dict[str, list[SignallingRow]] = defaultdict(list)
+        for row in audit.assessment.messages:
+            said[row.call].append(row)
+        by_call = {call.id: self.router.route(_way(call, said[call.id])) for call in audit.assessment.calls}
+        return [by_call[call] for call in calls]
 
 
-def _way(call: Any, said: Sequence[Any]) -> Way:
+def _way(call: AssessedCall, said: Sequence[SignallingRow]) -> Way:
     streams = call.from_caller + call.from_callee
     addresses = {address for one in streams for address in (one.stream.source, one.stream.destination)}
-    addresses |= {end.rsplit(":", 1)[0].strip("[]") for sender, receiver, _ in said for end in (sender, receiver)}
+    addresses |= {end.rsplit(":", 1)[0].strip("[]") for row in said for end in (row.from_, row.to)}
     return Way(
         addresses=frozenset(addresses),
         numbers=(call.caller, call.callee),
         vlans=frozenset(int(one.stream.packets.vlan[0]) for one in streams if len(one.stream.packets)),
-        signalling=tuple(line for _, _, line in said if isinstance(line, str)),
+        signalling=tuple(row.line for row in said),
     )
 
 

@@ -110,7 +110,6 @@ def _examine(task: Task, rows: PieceRows, settings: AuditSettings, last: bool) -
                 digits=settings.digits,
                 sound=settings.sound,
             )
-            found.tables  # noqa: B018  built here, where a fault is this capture's own
             if look_again(task.found) != task.found:
                 return Examined(task, LEFT, capture)
             rows.add(_facts(task, capture, DONE, "", begun), found)

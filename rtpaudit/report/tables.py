@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping, Sequence
+from itertools import chain
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -18,6 +19,9 @@ if TYPE_CHECKING:
 # What a row of assess carries under the very name of the column.
 _STREAM_FACTS = tuple(one.name for one in TABLES["streams"] if one.name in Stream.__dataclass_fields__)
 _CALL_FACTS = tuple(one.name for one in TABLES["calls"] if one.name in AssessedCall.__dataclass_fields__)
+Columns = Mapping[str, Any]
+"""Cells by column, as lists or arrays of one length."""
+
 _NO_TIME = np.iinfo(np.int64).min
 _LAST = np.iinfo(np.int64).max
 
@@ -39,18 +43,53 @@ def build_tables(
         One per row, with an attribute for each column. A time column ``x`` is read from ``x_ns``, and a column whose
         name Python keeps for itself (``from``) from the name with an underscore behind it.
     """
+    columns = table_columns(assessment, findings, signalling, events, reports)
+    return {name: build_frame(name, [columns[name]]) for name in TABLES}
+
+
+def table_columns(
+    assessment: Assessment,
+    findings: Sequence[Any] = (),
+    signalling: Sequence[Any] = (),
+    events: Sequence[Any] = (),
+    reports: Sequence[Any] = (),
+) -> dict[str, Columns]:
+    """The columns of all tables of one audit, from which ``build_frame`` makes DataFrames; as ``build_tables``."""
     streams = sorted(assessment.streams, key=lambda one: id_number(one.id))
     calls = sorted(assessment.calls, key=lambda one: id_number(one.id))
-    made = {
-        "calls": _frame("calls", _calls(calls)),
-        "streams": _frame("streams", _streams(streams)),
-        "gaps": _frame("gaps", _gaps(streams)),
-        "windows": _frame("windows", _windows(streams)),
-        "damage": _frame("damage", _rows("damage", assessment.damage)),
+    made: dict[str, Columns] = {
+        "calls": _calls(calls),
+        "streams": _streams(streams),
+        "gaps": _gaps(streams),
+        "windows": _windows(streams),
+        "damage": _rows("damage", assessment.damage),
     }
     for name, rows in (("findings", findings), ("signalling", signalling), ("events", events), ("reports", reports)):
-        made[name] = _frame(name, _rows(name, sorted(rows, key=_place)))
-    return {name: made[name] for name in TABLES}
+        made[name] = _rows(name, sorted(rows, key=_place))
+    return made
+
+
+def build_frame(table: str, parts: Sequence[Columns]) -> DataFrame:
+    """One table out of the columns of one audit or, one after the other, of several: many small ones cost as one."""
+    import pandas as pd
+
+    made = {one.name: _AS_KIND[one.kind](_end_to_end([part[one.name] for part in parts])) for one in TABLES[table]}
+    return pd.DataFrame(made, copy=False)
+
+
+def _end_to_end(parts: Sequence[Any]) -> Any:
+    first = parts[0]
+    if len(parts) == 1:
+        return first
+    if isinstance(first, list):
+        return list(chain.from_iterable(parts))
+    if isinstance(first, np.ma.MaskedArray):
+        return np.ma.array(
+            np.concatenate([one.data for one in parts]), mask=np.concatenate([one.mask for one in parts])
+        )
+    if isinstance(first, np.ndarray):
+        return np.concatenate(parts)
+    return type(first)._concat_same_type(parts)
 
 
 def id_number(identifier: str) -> int:
@@ -134,12 +173,6 @@ def _counted(parts: Sequence[Any], counts: Sequence[int]) -> Any:
 
 def _repeated(identifiers: Sequence[str], counts: Sequence[int]) -> Any:
     return _text(identifiers).repeat(np.asarray(counts, np.int64))
-
-
-def _frame(table: str, columns: Mapping[str, Any]) -> DataFrame:
-    import pandas as pd
-
-    return pd.DataFrame({one.name: _AS_KIND[one.kind](columns[one.name]) for one in TABLES[table]}, copy=False)
 
 
 def _text(cells: Any) -> Any:

@@ -6,7 +6,7 @@ import pytest
 
 from rtpaudit.assess.results import Assessment
 from rtpaudit.columns import TABLES
-from rtpaudit.report.tables import build_tables
+from rtpaudit.report.tables import build_frame, build_tables, table_columns
 from tests.report import made
 
 DTYPES = {"text": "string", "count": "Int64", "number": "float64", "time": "datetime64[ns, UTC]", "yes_no": "boolean"}
@@ -128,3 +128,18 @@ def test_a_file_name_that_is_not_unicode_stays_writable() -> None:
     name = b"b\xfcro.pcap".decode("utf-8", "surrogateescape")
     streams = build_tables(Assessment(captures=[], streams=[made.stream("s01", capture=name)]))["streams"]
     assert streams.capture[0] == "b?ro.pcap"
+
+
+def test_columns_of_several_audits_make_the_frames_of_each_one_after_the_other() -> None:
+    audits = [
+        Assessment(captures=[], streams=[made.stream("s01"), made.stream("s02")]),
+        Assessment(captures=[]),
+        Assessment(captures=[], streams=[made.stream("s01", source="192.0.2.9")]),
+    ]
+    parts = [table_columns(one) for one in audits]
+    for table in TABLES:
+        apart = [build_tables(one)[table] for one in audits]
+        together = build_frame(table, [part[table] for part in parts])
+        rows = [row for frame in apart for row in frame.astype(object).where(frame.notna(), None).values.tolist()]
+        assert together.astype(object).where(together.notna(), None).values.tolist() == rows
+        assert together.dtypes.to_list() == apart[0].dtypes.to_list()
