@@ -22,6 +22,8 @@ MAINS_HZ = (50, 60)
 HARMONICS = 8
 PROMINENCE_DB = 10.0
 """of a line of hum above the spectrum beside it (common practice)"""
+ALONE_DB = 25.0
+"""prominence from which the mains frequency counts without any of its multiples (common practice)"""
 FIRST_TWO = 10.0**2.5
 """by which the power of another multiple may exceed that of the first two; a tone exceeds it (common practice)"""
 STEADY_SHARE = 20
@@ -105,7 +107,8 @@ def hum_of(spectra: Spectra) -> Hum | None:
     -------
     Hum or None
         Where two or more of the first eight multiples of 50 or 60 Hz stand out by 10 dB, one of the first two among
-        them and not faint beside the others, and the hum is above ``LEAST_HUM_DBOV``.
+        them and not faint beside the others, or the mains frequency itself by 25 dB, and the hum is above
+        ``LEAST_HUM_DBOV``.
 
     Notes
     -----
@@ -145,7 +148,8 @@ def _hum_at(steady: NDArray[np.float64], mains_hz: int, seconds: int) -> Hum | N
         if prominence >= PROMINENCE_DB:
             lines[harmonic] = (float(steady[peak - 1 : peak + 2].sum()) - 3.0 * floor, float(prominence), peak)
     strongest = max(lines.values(), default=(0.0, 0.0, 0))
-    if len(lines) < 2 or strongest[0] > FIRST_TWO * max(lines.get(k, (0.0,))[0] for k in (1, 2)):
+    alone = len(lines) == 1 and lines.get(1, (0.0, 0.0))[1] >= ALONE_DB
+    if (len(lines) < 2 and not alone) or strongest[0] > FIRST_TWO * max(lines.get(k, (0.0,))[0] for k in (1, 2)):
         return None
     excess = float(np.mean([line[1] for line in lines.values()])) - PROMINENCE_DB
     confidence = min(99.0, 50.0 + 2.0 * excess + 5.0 * len(lines)) * min(1.0, 0.6 + seconds / 40.0)

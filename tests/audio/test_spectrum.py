@@ -94,3 +94,11 @@ def test_silence_and_a_short_stream_say_nothing():
     assert np.isnan(band_of(spectra(np.zeros(16000, np.int16))).below_pct)
     assert spectra(np.zeros(7999, np.int16)).shape == (0, 4001)
     assert hum_of(spectra(np.zeros(100, np.int16))) is None
+
+
+@pytest.mark.parametrize("hz", [50, 60])
+def test_the_mains_frequency_counts_without_its_multiples_where_it_stands_out(hz):
+    found = hum_of(spectra(to_int16(noise(12, -60) + sine(hz, 12, -40))))
+    assert found is not None
+    assert (found.mains_hz, found.harmonics) == (hz, (1,))
+    assert hum_of(spectra(to_int16(noise(12, -60) + sine(hz, 12, -90)))) is None
