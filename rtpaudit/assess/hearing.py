@@ -17,7 +17,7 @@ from rtpaudit.audio.onsets import Onsets, onsets_of
 from rtpaudit.audio.payload import Idle, Repetition, idle_of, repetition_of
 from rtpaudit.audio.progress import ProgressTone, progress_tones
 from rtpaudit.audio.robbed_bits import RobbedBits, robbed_bits_of
-from rtpaudit.audio.scan import EXTREMES, LINEAR_EXTREMES, Scan, scan
+from rtpaudit.audio.scan import BLOCKS_PER_S, EXTREMES, LINEAR_EXTREMES, Scan, scan
 from rtpaudit.audio.silence import Passage, dead_air
 from rtpaudit.audio.slips import Slips, slips_of
 from rtpaudit.audio.spectrum import Band, Hum, band_of, hum_of, spectra_of
@@ -30,7 +30,9 @@ from rtpaudit.media.streams import Stream
 Samples = NDArray[np.int16]
 G711 = ("PCMU", "PCMA")
 PAUSE_S = 0.2
-"""in which nothing is sent, from which speech that follows begins anew"""
+"""in which nothing is sent, or digital silence, from which speech that follows begins anew"""
+SILENT_PEAK = 8
+"""of digital silence: A-law has no zero"""
 
 
 @dataclass(slots=True)
@@ -57,7 +59,7 @@ class StreamSound:
     splices: Splices | None
     tandem: Tandem | None = None
     onsets: Onsets | None = None
-    """None where silence is not suppressed"""
+    """None where there are no pauses in which nothing was sent, or nothing but silence"""
     payload: "PayloadSigns" = field(default_factory=lambda: PayloadSigns())
 
 
@@ -129,6 +131,17 @@ def begins_after_pauses(
     return np.asarray(place[1:][paused])
 
 
+def begins_after_silence(samples: Samples, scanned: Scan) -> NDArray[np.int64]:
+    """First sample of each talkspurt that follows digital silence in packets. [samples]"""
+    silent = np.concatenate([[False], (scanned.received > 0) & (scanned.peak <= SILENT_PEAK), [False]])
+    edges = np.flatnonzero(np.diff(silent.astype(np.int8)))
+    lasts = edges[1::2] - edges[::2] >= PAUSE_S * BLOCKS_PER_S
+    begins = edges[1::2][lasts] * scanned.block_samples
+    begins = begins[begins + scanned.block_samples <= len(samples)]
+    loud = np.abs(samples[begins[:, None] + np.arange(scanned.block_samples)].astype(np.int32)) > SILENT_PEAK
+    return np.asarray(begins + loud.argmax(axis=1))
+
+
 def hear(
     stream: Stream,
     samples: Samples,
@@ -177,5 +190,5 @@ def hear(
         slips=slips_of(samples, rate_hz, received, packet, judged),
         splices=splices_of(samples, rate_hz, packet, received, judged) if packet else None,
         tandem=tandem_of(samples, stream.encoding),
-        onsets=onsets_of(samples, rate_hz, begins, level),
+        onsets=onsets_of(samples, rate_hz, np.union1d(begins, begins_after_silence(samples, scanned)), level),
     )

@@ -15,6 +15,8 @@ BODY_S = 0.25
 BELOW_DB = 14.0
 """below the active level: speech in full swing lies above it nearly all the time (common practice)"""
 FEWEST = 4
+LEAST_DBOV = -42.0
+"""softer speech has its soft beginnings below the steps of the code (common practice)"""
 
 
 @dataclass(frozen=True, slots=True)
@@ -49,7 +51,7 @@ def onsets_of(samples: Samples, sampling_rate_hz: int, begins: NDArray[np.int64]
     Returns
     -------
     Onsets or None
-        None below four talkspurts, and without speech.
+        None below four talkspurts, and without speech or where it is too soft.
 
     Notes
     -----
@@ -58,7 +60,7 @@ def onsets_of(samples: Samples, sampling_rate_hz: int, begins: NDArray[np.int64]
     """
     first, body = round(FIRST_S * sampling_rate_hz), round(BODY_S * sampling_rate_hz)
     begins = begins[begins + body <= len(samples)]
-    if len(begins) < FEWEST or np.isnan(level.active_dbov):
+    if len(begins) < FEWEST or not level.active_dbov >= LEAST_DBOV:
         return None
     pieces = samples[begins[:, None] + np.arange(body)].astype(np.float64)
     limit = level.active_dbov - BELOW_DB
