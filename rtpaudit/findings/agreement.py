@@ -12,6 +12,9 @@ from rtpaudit.findings.words import ms, pct
 from rtpaudit.media.streams import Content
 from rtpaudit.units import NS_PER_S, percent
 
+SAMPLE_BY_SAMPLE = ("PCMU", "PCMA", "G722")
+"""encodings that could be cut anywhere, and are cut at multiples of 5 ms (common practice)"""
+
 
 @rule(
     "encodings-differ", group="call", limit=1, unit="", basis=COMMON_PRACTICE,
@@ -84,10 +87,11 @@ def packet_time_wrong(case: Case, limit: float) -> Iterator[Evidence]:
             found = facts.stream.packet_time_ms
             asked = _asked_packet_time(case, facts, listener)
             differs = abs(found - asked) > 1.0
-            if not differs and not found > limit:
+            odd = facts.stream.encoding in SAMPLE_BY_SAMPLE and found % 5.0 > 0.01
+            if not differs and not found > limit and not odd:
                 continue
-            told = f"while the {listener} asked for {ms(asked)}" if differs else "so that each lost packet takes a "
-            "syllable"
+            told = "which few receivers expect" if odd else "so that each lost packet takes a syllable"
+            told = f"while the {listener} asked for {ms(asked)}" if differs else told
             yield Evidence(
                 measured=found,
                 says=f"The {case.talker(facts)} sends {ms(found)} of speech in a packet, {told}.",

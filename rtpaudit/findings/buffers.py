@@ -126,15 +126,18 @@ def _simulated(case: Case, facts: StreamFacts, varies: float, shallow: bool) -> 
     if not (share >= LEAST_DISCARD_PCT or usual > buffer) or (shallow and buffer >= WITHIN_MS):
         return
     needed = max(_needed_ms(facts, 99), usual)
-    came = f"{pct(share)} of the packets to the {case.listener(facts)} came too late for a playout buffer of"
+    late_share = pct(share) if len(late) else "None"
+    came = f"{late_share} of the packets to the {case.listener(facts)} came too late for a playout buffer of"
     cause = (
         f"only {ms(buffer)}, though the network varies by no more than {ms(varies)}"
         if shallow
         else f"{ms(buffer)}, as delay varies by {ms(needed)} and more"
     )
+    luck = "that was luck, as the first packet was late itself"
+    heard = f"heard as crackle and dropouts{_better(facts)}" if len(late) else luck
     yield Evidence(
         measured=buffer if shallow else needed,
-        says=f"{came} {cause}: heard as crackle and dropouts{_better(facts)}.",
+        says=f"{came} {cause}: {heard}.",
         stream=facts.id,
         where=ENDPOINT if shallow else BEFORE,
         confidence_pct=75.0,
@@ -147,7 +150,7 @@ def _simulated(case: Case, facts: StreamFacts, varies: float, shallow: bool) -> 
 def _usual_ms(facts: StreamFacts) -> float:
     """Delay above a slow base line that 95 % of the packets stay at or below, without excursions and overtaken ones."""
     found = excursions(facts, WITHIN_MS)
-    above = found.above_ms[(found.event_of < 0) & ~facts.overtaken[facts.timed.row]]
+    above = found.above_ms[(found.event_of < 0) & ~facts.strayed[facts.timed.row]]
     return float(np.percentile(above, 95)) if len(above) >= 10 else 0.0
 
 

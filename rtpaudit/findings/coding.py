@@ -146,7 +146,8 @@ def speech_start_clipped(case: Case, limit: float) -> Iterator[Evidence]:
     for facts in case.streams:
         sound = facts.assessed.sound
         found = sound.onsets if sound is not None else None
-        if found is None or not found.cut_pct >= limit:
+        # Tones of keys begin in full swing by right.
+        if found is None or sound is None or not found.cut_pct >= limit or len(sound.digits) >= found.cut / 2:
             continue
         yield Evidence(
             measured=found.cut_pct,

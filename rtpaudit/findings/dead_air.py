@@ -15,6 +15,7 @@ from rtpaudit.findings.words import seconds, times
 from rtpaudit.units import NS_PER_S
 
 MOSTLY_PCT = 80.0
+EDGE_S = 1.0
 IDLE_PEAK = 8
 """of digital silence: A-law has no zero"""
 SOMETIMES = 0.05
@@ -31,7 +32,8 @@ DEAD_DBOV = -68.0
     "noise to digital silence, or the whole stream where it never had any",
     check_next="Ask whether somebody had muted or was on hold; otherwise look at the microphone, and at what "
     "bridges the call.",
-    severity="a fault where a side was silent all along or both fell silent, else a concern",
+    severity="a fault where a side was silent all along or both fell silent in mid-call, a concern where one side did, "
+    "a remark where both were silent before the first words or after the last",
 )  # fmt: skip
 def dead_air(case: Case, limit: float) -> Iterator[Evidence]:
     """Packets without sound."""
@@ -55,7 +57,8 @@ def dead_air(case: Case, limit: float) -> Iterator[Evidence]:
     both = [] if talk is None else _dead_together(case, talk, limit)
     if both and talk is not None:
         origin = case.seconds(talk.from_ns)
-        longest = max(end - begin for begin, end in both)
+        inside = [one for one in both if not _at_an_end(talk, case, *one)]
+        longest = max(end - begin for begin, end in inside or both)
         yield Evidence(
             measured=longest,
             says=f"Neither side had any sound {times(len(both))}, for {seconds(longest)} at the longest: the line "
@@ -64,12 +67,15 @@ def dead_air(case: Case, limit: float) -> Iterator[Evidence]:
             confidence_pct=75.0,
             from_s=origin + both[0][0],
             to_s=origin + both[-1][1],
-            at_least="fault",
+            at_least="fault" if inside else "remark",
+            at_most="fault" if inside else "remark",
             gravity=40.0,
         )
         return
     for facts, sound in sounds_of(case):
         silences = [] if is_cut(facts) else _mute_passages(sound, limit)
+        # Who falls silent each time the other speaks has a gate, and is not dead.
+        silences = silences if len(silences) == 1 else []
         mute = [piece for one in silences for piece in _off_hold(case, sound.origin_ns, *one, limit)]
         if mute:
             longest = max(end - begin for begin, end in mute)
@@ -121,6 +127,12 @@ def _dead_together(case: Case, sound: CallSound, least_s: float) -> list[tuple[f
         if one.received_pct >= MOSTLY_PCT and begin >= answered and end <= case.heard_until_ns + NS_PER_S:
             found += _off_hold(case, sound.from_ns, one.from_s, one.to_s, least_s)
     return found
+
+
+def _at_an_end(talk: CallSound, case: Case, from_s: float, to_s: float) -> bool:
+    """Whether a passage lies before the first words or after the last ones: people wait, and leave."""
+    last_s = (max(facts.assessed.ended_ns for facts in case.streams) - talk.from_ns) / NS_PER_S
+    return from_s < EDGE_S or to_s > last_s - EDGE_S
 
 
 def _off_hold(case: Case, origin_ns: int, from_s: float, to_s: float, least_s: float) -> list[tuple[float, float]]:

@@ -2,7 +2,11 @@
 
 from collections.abc import Iterator
 
+import numpy as np
+
 from rtpaudit.findings.case import Case
+from rtpaudit.findings.excursions import excursions
+from rtpaudit.findings.facts import StreamFacts
 from rtpaudit.findings.numbering import (
     packet_times_of,
     restarts_of,
@@ -12,11 +16,18 @@ from rtpaudit.findings.numbering import (
     timestamp_rate,
     wrong_steps,
 )
-from rtpaudit.findings.pacing import pacing_of
+from rtpaudit.findings.pacing import STALL_MS, pacing_of, stalls_all_along
+from rtpaudit.findings.patterns import lasting_steps
+from rtpaudit.findings.place import hops_from_sender
 from rtpaudit.findings.rule import COMMON_PRACTICE, ENDPOINT, Evidence, rule
 from rtpaudit.findings.share import claim
 from rtpaudit.findings.words import many, ms, number, pct, seconds, times
 from rtpaudit.units import MS_PER_S, percent
+
+FEW_SKIPPED = 3
+"""numbers skipped at once, over which a single time counts"""
+STOP_MS = 150.0
+"""step of the delay for good that no other route makes (common practice)"""
 
 
 @rule(
@@ -33,7 +44,7 @@ def clock_skew(case: Case, limit: float) -> Iterator[Evidence]:
     """A sender's clock that runs away."""
     for facts in case.streams:
         skew = facts.assessed.figures.clock_skew_ppm
-        if not abs(skew) > limit or timestamp_rate(facts) is not None:
+        if not abs(skew) > limit or timestamp_rate(facts) is not None or not _stands_out(facts, skew):
             continue
         slip_s = facts.packet_time_ms / MS_PER_S / (abs(skew) * 1e-6)
         yield Evidence(
@@ -62,6 +73,9 @@ def sender_pacing(case: Case, limit: float) -> Iterator[Evidence]:
     """A sender that sends in bunches."""
     for facts in case.streams:
         found = pacing_of(facts)
+        if found is None and hops_from_sender(facts) == 0 and stalls_all_along(facts):
+            yield _stalls(case, facts)
+        yield from _stop(case, facts)
         if found is None or found.height_ms < limit / 100.0 * facts.packet_time_ms:
             continue
         late = facts.late_items
@@ -76,6 +90,53 @@ def sender_pacing(case: Case, limit: float) -> Iterator[Evidence]:
             claims=[claim(facts, late, 0.9 * found.explained)],
             at_least="concern",
         )
+
+
+def _stands_out(facts: StreamFacts, skew_ppm: float) -> bool:
+    """Whether the drift over the stream is more than half of what packets are usually off anyway."""
+    drift_ms = abs(skew_ppm) * 1e-6 * facts.duration_s * MS_PER_S
+    usual = float(np.median(excursions(facts, STALL_MS).above_ms)) if len(facts.timed.row) else 0.0
+    return drift_ms > 0.5 * usual
+
+
+def _stalls(case: Case, facts: StreamFacts) -> Evidence:
+    found = excursions(facts, STALL_MS)
+    height = float(np.median(found.peak_ms))
+    return Evidence(
+        measured=percent(height, facts.packet_time_ms),
+        says=f"The {case.talker(facts)} stops for about {ms(height)} again and again ({times(len(found.peak_ms))}) "
+        "and then sends at once what it owes; no router lies between it and the capture, so that the sender itself "
+        "is the likely cause.",
+        stream=facts.id,
+        where=ENDPOINT,
+        confidence_pct=65.0,
+        claims=[claim(facts, facts.late_items, 0.65)],
+        at_least="concern",
+    )
+
+
+def _stop(case: Case, facts: StreamFacts) -> Iterator[Evidence]:
+    """A pause after which a stream goes on with the very next sample, later by the pause for good."""
+    beside = max(5, round(MS_PER_S / facts.packet_time_ms))
+    steps = [one for one in lasting_steps(facts.timed.delay_ms, STOP_MS, beside) if one.height > 0]
+    others = [one for one in case.streams if one is not facts]
+    if not steps or any(lasting_steps(one.timed.delay_ms, STOP_MS / 2, beside) for one in others):
+        return
+    longest = max(steps, key=lambda one: one.height)
+    row = int(facts.timed.row[longest.at])
+    at = case.seconds(int(facts.packets.time_ns[row]))
+    yield Evidence(
+        measured=percent(longest.height, facts.packet_time_ms),
+        says=f"The {case.talker(facts)} stopped sending {times(len(steps))}, for {ms(longest.height)} at the "
+        "longest, and went on with the very next sample, so that all that followed came later by as much.",
+        stream=facts.id,
+        where=ENDPOINT,
+        confidence_pct=70.0,
+        from_s=at - longest.height / MS_PER_S,
+        to_s=at,
+        claims=[claim(facts, facts.late_within_talkspurt(row), 0.8)],
+        at_least="concern",
+    )
 
 
 @rule(
@@ -124,7 +185,8 @@ def sequence_fault(case: Case, limit: float) -> Iterator[Evidence]:
         reused = reused_numbers(facts)
         jumps = sum(1 for one in restarts_of(facts) if one.timestamps_go_on)
         faults = len(skipped) + reused + (jumps if jumps else 0)
-        if faults < limit and not jumps:
+        far = int(facts.gone.packets[skipped].max(initial=0)) > FEW_SKIPPED
+        if faults < limit and not jumps and not far:
             continue
         kinds = [
             f"{times(len(skipped))} numbers were skipped though no sound is missing" if len(skipped) else "",

@@ -45,10 +45,10 @@ def is_calm(facts: StreamFacts, least_ms: float) -> bool:
 def excursions(facts: StreamFacts, least_ms: float) -> Excursions:
     """Passages that go ``least_ms`` or more, and well beyond the usual spread, above a slow base line.
 
-    Overtaken packets do not count: what one packet lost against the others is no matter of the way's delay.
+    Single overtaken packets do not count: what one lost against the others is no matter of the way's delay.
     """
     timed = facts.timed
-    ordered = np.flatnonzero(~facts.overtaken[timed.row])
+    ordered = np.flatnonzero(~facts.strayed[timed.row])
     event_of = np.full(len(timed.row), -1)
     if len(ordered) < FEWEST_PACKETS:
         return _none(event_of, np.zeros(len(timed.row)))

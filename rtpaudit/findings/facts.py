@@ -17,6 +17,9 @@ from rtpaudit.profile import Playout, Profile
 from rtpaudit.signalling.rtcp_voip import VoipMetrics
 from rtpaudit.units import NS_PER_MS, NS_PER_S
 
+PASSAGE_PACKETS = 3
+"""neighbours that are late together make a passage of delay"""
+
 Mask = NDArray[np.bool_]
 Indices = NDArray[np.int64]
 Floats = NDArray[np.float64]
@@ -210,6 +213,18 @@ class StreamFacts:
         number = packets.segment.astype(np.int64) << 48 | packets.extended
         number = np.where(packets.duplicate, np.iinfo(np.int64).min, number)
         return np.asarray((number < np.maximum.accumulate(number)) & ~packets.duplicate)
+
+    @cached_property
+    def strayed(self) -> Mask:
+        """Overtaken packets by themselves: where three in a row came late, the way was slow and not the packet."""
+        order = self.sequence.order
+        late = np.concatenate([[False], self.overtaken[order], [False]])
+        edges = np.flatnonzero(np.diff(late.astype(np.int8)))
+        alone = np.zeros(len(self.packets), np.bool_)
+        for begin, end in zip(edges[::2].tolist(), edges[1::2].tolist(), strict=True):
+            if end - begin < PASSAGE_PACKETS:
+                alone[order[begin:end]] = True
+        return alone
 
     @cached_property
     def delay_of_row(self) -> Floats:

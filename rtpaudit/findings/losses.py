@@ -10,6 +10,8 @@ from rtpaudit.units import NS_PER_MS, NS_PER_S
 Floats = NDArray[np.float64]
 Indices = NDArray[np.int64]
 
+FARTHEST = 25
+"""packets between losses: a limit less than 4 % below the rate of the stream would be set by nobody"""
 OUTAGE_MS = 1000.0
 """from here on a gap is an outage and no burst"""
 EVEN = 0.15
@@ -99,9 +101,9 @@ def spacing_of(facts: StreamFacts, items: Indices) -> tuple[float, float]:
 
 
 def is_by_rate(facts: StreamFacts, items: Indices) -> bool:
-    """Whether losses are evenly spaced and closer than the shortest period."""
+    """Whether losses are evenly spaced and as close as a rate limit makes them."""
     evenness, spacing = spacing_of(facts, items)
-    return bool(evenness <= EVEN and spacing * facts.packet_time_ms < 1000.0)
+    return bool(evenness <= EVEN and spacing <= FARTHEST)
 
 
 def late_in_queue(facts: StreamFacts, chosen: Indices) -> Indices:

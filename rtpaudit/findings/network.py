@@ -11,6 +11,7 @@ from rtpaudit.findings.facts import StreamFacts
 from rtpaudit.findings.far_end import lost_after
 from rtpaudit.findings.losses import (
     EVEN,
+    FARTHEST,
     OUTAGE_MS,
     bursts_among,
     clustered,
@@ -30,11 +31,12 @@ from rtpaudit.units import percent
 
 AFTER_PCT = 0.5
 """loss behind the capture point that counts: reports come late and round (common practice)"""
+SHORTEST_PERIOD_S = 0.45
 EVENT_APART_S = 0.25
 """losses closer than this belong to one event"""
-TOGETHER_S = 0.03
+TOGETHER_S = 0.1
 """by which gaps of two directions may miss each other and still be one"""
-MOST_CHANCE = 0.02
+MOST_CHANCE = 0.03
 """that so many gaps fall together though they have nothing to do with each other"""
 
 
@@ -51,9 +53,9 @@ def random_loss(case: Case, limit: float) -> Iterator[Evidence]:
     yield from lost_after(case, AFTER_PCT, in_bursts=False)
     for facts in case.streams:
         items, left = facts.lost_items, case.left(facts)
-        lost = facts.gone.packets[items] * left[items]
+        chosen = items[left[items] > 0.5]
+        lost = facts.gone.packets[chosen] * left[chosen]
         share = percent(float(lost.sum()), facts.sequence.expected)
-        chosen = items[left[items] > 0.05]
         if not len(chosen) or not share >= limit:
             continue
         where = place.of_lost(facts, chosen)
@@ -163,7 +165,7 @@ def periodic_loss(case: Case, limit: float) -> Iterator[Evidence]:
             begin, end = times_of(facts, heavy)
             event = events_of(begin, end, EVENT_APART_S)
             first = np.searchsorted(event, np.arange(event[-1] + 1))
-            found = rhythm(begin[first], shortest_s=1.0)
+            found = rhythm(begin[first], SHORTEST_PERIOD_S)
             if found is None or found.events < limit or (least == 1 and is_by_rate(facts, heavy)):
                 continue
             lost = int(facts.gone.packets[heavy].sum())
@@ -199,7 +201,7 @@ def policing(case: Case, limit: float) -> Iterator[Evidence]:
         items = facts.lost_items
         items = items[case.left(facts)[items] > 0.5]
         evenness, spacing = spacing_of(facts, items)
-        if not evenness <= limit or spacing * facts.packet_time_ms >= 1000.0:
+        if not evenness <= limit or spacing > FARTHEST:
             continue
         share = percent(float(facts.gone.packets[items].sum()), facts.sequence.expected)
         where = place.of_lost(facts, items)

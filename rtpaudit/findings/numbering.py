@@ -11,7 +11,11 @@ from rtpaudit.media.streams import Content
 from rtpaudit.metrics.gaps import LONGEST_PACKET_MS
 from rtpaudit.units import MS_PER_S, NS_PER_MS, NS_PER_S
 
+Floats = NDArray[np.float64]
+
 LASTING_PACKETS = 20
+NO_CLOCK_PPM = 20_000.0
+"""no quartz is off by 2 %"""
 
 
 @dataclass(frozen=True, slots=True)
@@ -53,7 +57,10 @@ def timestamp_rate(facts: StreamFacts) -> float | None:
     if not sound.any():
         return None
     measured = float(np.median(moved[sound] / passed[sound]))
-    return measured if not 0.8 * rate < measured < 1.25 * rate else None
+    if not 0.97 * rate < measured < 1.03 * rate:
+        return measured
+    skew = facts.assessed.figures.clock_skew_ppm
+    return rate * (1.0 + skew * 1e-6) if abs(skew) > NO_CLOCK_PPM else None
 
 
 @dataclass(frozen=True, slots=True)
@@ -122,9 +129,20 @@ def skipped_numbers(facts: StreamFacts) -> NDArray[np.int64]:
     media_ms = (packets.media_ticks[runs.after] - packets.media_ticks[runs.before]) * (MS_PER_S / rate)
     passed_ms = (packets.time_ns[runs.after] - packets.time_ns[runs.before]) / NS_PER_MS
     speech = facts.audio[runs.after] & facts.audio[runs.before]
-    usual = facts.packet_time_ms
+    usual = _step_before(facts)
     bridged = speech & (media_ms > 0) & (media_ms < 1.5 * usual) & (passed_ms < 2.5 * usual)
     return facts.lost_items[bridged]
+
+
+def _step_before(facts: StreamFacts) -> Floats:
+    """Packet time just before each run of missing numbers, that of the stream where it cannot be told. [ms]"""
+    packets, runs, order = facts.packets, facts.runs, facts.sequence.order
+    here = np.maximum(runs.position, 1)
+    ticks = packets.media_ticks[order[here]] - packets.media_ticks[order[here - 1]]
+    step_ms = ticks * (MS_PER_S / facts.stream.clock_rate_hz)
+    known = (facts.sequence.place[here] - facts.sequence.place[here - 1] == 1) & (runs.position > 0)
+    known &= (step_ms > 0) & (step_ms <= LONGEST_PACKET_MS)
+    return np.asarray(np.where(known, step_ms, facts.packet_time_ms))
 
 
 def reused_numbers(facts: StreamFacts) -> int:
@@ -146,9 +164,8 @@ def successions(streams: list[StreamFacts]) -> list[int]:
     for k, later in enumerate(ordered):
         for earlier in ordered[:k]:
             one, other = earlier.stream, later.stream
-            same = (one.source, one.source_port, one.destination, one.destination_port) == (
-                other.source, other.source_port, other.destination, other.destination_port,
-            )  # fmt: skip
+            ends = (one.source, one.destination, one.destination_port)
+            same = ends == (other.source, other.destination, other.destination_port)
             if same and one.ssrc != other.ssrc and later.assessed.started_ns > earlier.assessed.ended_ns - NS_PER_S:
                 times.append(later.assessed.started_ns)
                 break

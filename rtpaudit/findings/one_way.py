@@ -44,7 +44,7 @@ def unseen_direction(case: Case) -> Unseen | None:
     other = dict(zip(("caller", "callee"), ("callee", "caller"), strict=True))[listener]
     if _far_end_sends(longest):
         why = f"the {other}'s own reports say that it was sending"
-        return Unseen(listener, longest.duration_s, 0.6, why)
+        return Unseen(listener, longest.duration_s, 0.8, why)
     if longest.assessed.far_end is not None and longest.assessed.far_end.blocks:
         return Unseen(listener, longest.duration_s, 0.2, "")
     return Unseen(listener, longest.duration_s, 0.5 if case.call.signalled is None else 0.2, "")

@@ -6,11 +6,15 @@ from typing import cast
 import numpy as np
 from numpy.typing import NDArray
 
+from rtpaudit.findings.excursions import excursions
 from rtpaudit.findings.facts import StreamFacts
+from rtpaudit.findings.patterns import rhythm
 
 LONGEST_BUNCH = 12
 BUNCHED = 0.5
 """of the sawtooth that bunches of so many packets make, the least that counts"""
+STALL_MS, FEWEST_STALLS, STALLS_PER_S, AT_ONCE_S = 20.0, 8, 0.3, 0.003
+"""height and number of stops that make a habit, and what follows a stop at once (common practice)"""
 EXPLAINED = 0.6
 """share of the variance that the regular bunches have to explain"""
 
@@ -39,7 +43,7 @@ def pacing_of(facts: StreamFacts) -> Pacing | None:
 
 def _pacing(facts: StreamFacts) -> Pacing | None:
     timed = facts.timed
-    ordered = timed.row[~facts.overtaken[timed.row]]
+    ordered = timed.row[~facts.strayed[timed.row]]
     delay = facts.delay_of_row[ordered]
     number = facts.packets.extended[ordered]
     best: Pacing | None = None
@@ -68,3 +72,19 @@ def _pacing(facts: StreamFacts) -> Pacing | None:
 def _mean_where(table: NDArray[np.float64], mask: NDArray[np.bool_]) -> NDArray[np.float64]:
     count = mask.sum(axis=1)
     return np.where(count > 0, (table * mask).sum(axis=1) / np.maximum(count, 1), np.nan)
+
+
+def stalls_all_along(facts: StreamFacts) -> bool:
+    """Whether a stream stops again and again, at no regular interval, and then comes at once, calm otherwise."""
+    found = excursions(facts, STALL_MS)
+    count = len(found.peak_ms)
+    if count < FEWEST_STALLS or count < STALLS_PER_S * facts.duration_s or rhythm(found.from_s) is not None:
+        return False
+    outside = found.above_ms[found.event_of < 0]
+    inside = np.flatnonzero((found.event_of[1:] >= 0) & (found.event_of[1:] == found.event_of[:-1])) + 1
+    at_once = np.diff(facts.timed.time_s)[inside - 1] < AT_ONCE_S
+    return bool(
+        len(outside) > len(found.above_ms) / 2
+        and np.percentile(outside, 90) < facts.packet_time_ms / 4
+        and (at_once.mean() if len(inside) else 1.0) > 0.6
+    )

@@ -6,6 +6,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from rtpaudit.findings.case import Case
+from rtpaudit.findings.excursions import excursions
 from rtpaudit.findings.facts import StreamFacts
 from rtpaudit.findings.place import hops_from_sender
 from rtpaudit.findings.rule import BEFORE, COMMON_PRACTICE, ENDPOINT, UNKNOWN, Evidence, rule
@@ -19,23 +20,31 @@ NAMES = {0: "best effort (0)", 46: "EF (46)", 44: "VOICE-ADMIT (44)", 34: "AF41 
 DOUBLED_PCT = 40.0
 """share of copies from which a mirror that sees frames twice is likelier than a network that doubles them"""
 LASTING_PACKETS = 25
+PASSAGE_MS = 50.0
+LATE_PCT = 0.1
+"""overtaken packets that come too late, from which they count however few they are"""
 
 
 @rule(
     "reordering", group="network", limit=1.0, unit="%", basis=COMMON_PRACTICE,
     means="Packets overtook each other, as several ways, several queues or a parallel processor on the way make "
     "them do.",
-    measured_as="share of packets whose number is below the highest seen before (RFC 4737)",
+    measured_as="share of packets whose number is below the highest seen before (RFC 4737), passages of high delay "
+    "left out; fewer count where they come too late for playout",
     check_next="Look for load sharing packet by packet, bonded links, and devices that process packets in parallel.",
     severity="by what late packets take from the rating; at least a concern",
 )  # fmt: skip
 def reordering(case: Case, limit: float) -> Iterator[Evidence]:
     """Packets that overtake each other."""
     for facts in case.streams:
-        share = percent(facts.assessed.figures.packets_reordered, facts.sequence.received)
-        if not share >= limit:
+        if not facts.assessed.figures.packets_reordered:
             continue
-        overtaken = facts.late_items[facts.overtaken[facts.late_rows]]
+        single = _overtaken_singly(facts)
+        share = percent(int(single.sum()), facts.sequence.received)
+        late_share = percent(int(single[facts.late_rows].sum()), facts.sequence.expected)
+        if not share >= limit and not late_share >= LATE_PCT:
+            continue
+        overtaken = facts.late_items[single[facts.late_rows]]
         alone = _calm_but_for_overtaken(facts)
         late = overtaken if alone else overtaken[:0]
         heard = (
@@ -51,7 +60,7 @@ def reordering(case: Case, limit: float) -> Iterator[Evidence]:
             where=BEFORE,
             confidence_pct=95.0 if alone else 60.0,
             claims=[claim(facts, late, 0.95)],
-            at_least="concern" if alone else "remark",
+            at_least="concern" if alone and share >= limit else "remark",
             at_most="fault" if alone else "remark",
         )
 
@@ -243,6 +252,14 @@ def _changes(facts: StreamFacts) -> list[Change]:
 
 def _name(dscp: int) -> str:
     return NAMES.get(dscp, f"DSCP {dscp}")
+
+
+def _overtaken_singly(facts: StreamFacts) -> np.ndarray:
+    """Overtaken packets outside passages in which delay was high for many."""
+    single = facts.overtaken.copy()
+    found = excursions(facts, PASSAGE_MS)
+    single[facts.timed.row[found.event_of >= 0]] = False
+    return single
 
 
 def _calm_but_for_overtaken(facts: StreamFacts) -> bool:

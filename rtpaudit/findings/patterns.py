@@ -13,8 +13,8 @@ Indices = NDArray[np.int64]
 Mask = NDArray[np.bool_]
 
 FEWEST_EVENTS = 4
-UNEVENNESS = (0.05, 0.07)
-"""rms distance from the regular grid, over the period, for 4 events and for 6 and more; chance makes 0.29"""
+UNEVENNESS = (0.012, 0.02, 0.035, 0.06)
+"""rms distance from the regular grid, over the period, for 4, 5, 6 and more events; chance makes 0.29"""
 COVERAGE = 0.7
 """share of the places on the grid that have an event"""
 
@@ -55,7 +55,7 @@ def rhythm(at_s: Floats, shortest_s: float = 0.0) -> Rhythm | None:
     n = len(at_s)
     if n < FEWEST_EVENTS:
         return None
-    allowed = UNEVENNESS[0] if n < 6 else UNEVENNESS[1]
+    allowed = UNEVENNESS[min(n - FEWEST_EVENTS, len(UNEVENNESS) - 1)]
     best: Rhythm | None = None
     for period in _candidates(at_s):
         found = _fit(at_s, period)

@@ -15,6 +15,8 @@ from rtpaudit.findings.words import many, ms, number, times
 
 Y1541 = "ITU-T Y.1541, delay variation of classes 0 and 1"
 SHORTEST_PERIOD_S = 0.5
+CALM_MS = 50.0
+"""delay variation that a calm network may have: ITU-T Y.1541, classes 0 and 1"""
 HOLE_MS = 60.0
 """beyond it concealment has faded to silence. ITU-T G.711 Appendix I"""
 
@@ -90,9 +92,9 @@ def _beat(found: Excursions) -> Rhythm | None:
 
 
 def _rare(found: Excursions) -> bool:
-    """Whether excursions are moments in a calm stream."""
-    inside = float((found.event_of >= 0).mean())
-    return inside < 0.25
+    """Whether excursions are moments in a stream that is calm otherwise."""
+    outside = found.above_ms[found.event_of < 0]
+    return len(outside) > 0.75 * len(found.above_ms) and float(np.percentile(outside, 95)) <= CALM_MS
 
 
 def _late_in(facts: StreamFacts, found: Excursions) -> np.ndarray:

@@ -4,7 +4,7 @@ import numpy as np
 import pytest
 
 from rtpaudit.profile import Profile
-from tests.findings.made import Line, back, found, names, only
+from tests.findings.made import Line, back, found, held_up, names, only
 
 LONG = 2000
 """40 s: a skew is named from 30 s of audio on"""
@@ -108,3 +108,42 @@ def test_a_packet_time_that_changes_for_good_is_told() -> None:
     one = found(line, back(count=600))[0]
     assert (one.finding, one.from_s) == ("packet-time-change", pytest.approx(5.0))
     assert "from 20 ms to 40 ms" in one.says
+
+
+def test_a_sender_that_stops_and_goes_on_with_the_next_sample_is_told_with_the_length() -> None:
+    one = found(Line(sent_ms=np.arange(500) * 20.0 + np.where(np.arange(500) >= 250, 900, 0)), back(count=560))[0]
+    assert (one.finding, one.where) == ("sender-pacing", "endpoint")
+    assert "for 900 ms" in one.says
+
+
+def stops(ttl: int) -> list[str]:
+    firsts = (20, 45, 98, 121, 170, 222, 260, 293, 351, 377, 420, 466)
+    return names(Line(delay_ms=held_up(500, firsts, 100), ttl=ttl), back())
+
+
+def test_a_sender_beside_the_capture_that_stalls_again_and_again_is_the_likely_cause() -> None:
+    assert stops(ttl=64)[0] == "sender-pacing"
+
+
+def test_behind_routers_stalls_may_be_anybodys() -> None:
+    assert stops(ttl=61) == ["delay-spike"]
+
+
+def test_one_far_jump_of_the_numbers_within_speech_counts_by_itself() -> None:
+    one = found(Line(sequence=np.arange(500) + 700 * (np.arange(500) >= 250)), back())[0]
+    assert (one.finding, one.measured) == ("sequence-fault", 1)
+    assert "outage" not in [each.finding for each in found(Line(lost=()), back())]
+
+
+def test_a_loss_after_a_longer_packet_time_is_no_skipped_number() -> None:
+    """At 20 ms after 40 ms in most packets: the step over one missing packet is that of the longer ones."""
+    rows = np.arange(600)
+    ticks = np.where(rows < 400, rows * 320, 400 * 320 + (rows - 400) * 160)
+    line = Line(count=600, ticks=ticks, sent_ms=ticks / 8.0, lost=(430, 470, 500, 533, 561))
+    assert "sequence-fault" not in [one.finding for one in found(line, back(count=900))]
+
+
+def test_timestamps_off_by_a_few_percent_are_no_clock() -> None:
+    one = found(Line(count=LONG, ticks=np.arange(LONG) * 170), back(count=LONG))[0]
+    assert one.finding == "timestamp-fault"
+    assert "8,500 Hz" in one.says

@@ -60,3 +60,10 @@ def test_lasting_jitter_over_the_buffer_is_told_with_the_buffer_that_would_do() 
 def test_jitter_within_the_buffer_is_no_finding() -> None:
     draw = np.random.default_rng(2)
     assert names(Line(count=1500, delay_ms=draw.uniform(0, 18, 1500)), back(count=1500)) == []
+
+
+def test_a_passage_that_came_late_as_a_whole_is_a_spike_even_where_others_overtook_it() -> None:
+    delay = np.zeros(1000)
+    delay[400:415] = 200.0
+    findings = found(Line(count=1000, delay_ms=delay), back(count=1000))
+    assert [one.finding for one in findings] == ["delay-spike"]
