@@ -18,6 +18,11 @@ def test_the_table_of_measures_is_that_of_the_code() -> None:
     assert (ROOT / "docs" / "measures.md").read_text("utf-8") == made, "run: python docs/make_measures.py"
 
 
+def test_the_pages_of_findings_are_those_of_the_catalogue() -> None:
+    made = runpy.run_path(str(ROOT / "docs" / "make_findings.py"))["document"]()
+    assert (ROOT / "docs" / "findings.md").read_text("utf-8") == made, "run: python docs/make_findings.py"
+
+
 def test_both_commands_of_the_readme_are_those_that_are_checked() -> None:
     commands = re.findall(r"(?m)^```\n(python3 -m venv .*)\n```$", (ROOT / "README.md").read_text("utf-8"))
     assert len(commands) == 2
