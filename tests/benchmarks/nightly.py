@@ -5,6 +5,7 @@ call each, 4 MB; they are made first and count for nothing.
 """
 
 import os
+import resource
 import subprocess
 import sys
 import tempfile
@@ -58,16 +59,22 @@ def _anonymous(pid: str) -> int:
     return next((int(line.split()[1]) * 1024 for line in lines if line.startswith("RssAnon")), 0)
 
 
-def nightly(place: Path, source: Path, name: str, *more: str) -> tuple[float, int, int]:
-    """Seconds and peak memory of one run, figures only, without reports."""
-    begun = time.perf_counter()
+def nightly(place: Path, source: Path, name: str, *more: str) -> tuple[float, float, int, int]:
+    """Seconds on the clock and of all cores, and peak memory, of one run, figures only, without reports."""
+    begun, used = time.perf_counter(), _children_s()
     words = [sys.executable, "-m", "rtpaudit", "nightly", str(source), "--store", str(place / name), "--zone", "UTC"]
     given = ["--settle", "0", "--reports", "0", "--quiet", *more]
     process = subprocess.Popen([*words, *given], env=os.environ | {"XDG_STATE_HOME": str(place / "state")})
     main, worker = peak_anonymous(process)
     if process.returncode:
         raise SystemExit(f"the run ended with {process.returncode}")
-    return time.perf_counter() - begun, main, worker
+    return time.perf_counter() - begun, _children_s() - used, main, worker
+
+
+def _children_s() -> float:
+    """What all processes that were waited for have used of the cores. [s]"""
+    usage = resource.getrusage(resource.RUSAGE_CHILDREN)
+    return usage.ru_utime + usage.ru_stime
 
 
 def speed(most: int) -> None:
@@ -79,11 +86,12 @@ def speed(most: int) -> None:
             write_calls(place / "in", count - made, 180.0, first=made, loss=0.002)
             made = count
             base = read_all(place / "in")
-            taken, main, worker = nightly(place, place / "in", f"store-{count}")
+            taken, used, main, worker = nightly(place, place / "in", f"store-{count}")
             pace = f"{count / taken:6.1f} captures/s, {count * PACKETS / taken / 1e6:.2f} M packets/s"
             print(f"{count:6} captures  {taken:7.1f} s  {pace}, {taken / base:.0f} x reading them")
+            print(f"{'':15}  {used:7.1f} s  of cores, {1e3 * used / count:.1f} ms a capture")
             print(f"{'':15}  {main / 1e6:7.0f} MB in the run itself, {worker / 1e6:.0f} MB in a worker, at most")
-            again, _, _ = nightly(place, place / "in", f"store-{count}")
+            again, *_ = nightly(place, place / "in", f"store-{count}")
             print(f"{'':15}  {again:7.1f} s  with nothing new")
             kept = sum(path.stat().st_size for path in (place / f"store-{count}").rglob("*.parquet"))
             print(f"{'':15}  {kept / count / 1e3:7.1f} kB a capture in the store")
