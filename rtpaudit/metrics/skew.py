@@ -106,9 +106,10 @@ def clock_skew(of: Delays) -> Skew:
 def _long_enough(of: Delays) -> bool:
     """Whether there is so much audio by the timestamps, and arrivals bear it out: a clock that is set moves but one."""
     media = of.elapsed_ms - of.delay_ms
-    timelines = [slice(None)] if of.timeline is None else [of.timeline == name for name in np.unique(of.timeline)]
-    if len(timelines) > MOST_TIMELINES:
+    names = np.empty(0, np.int32) if of.timeline is None else np.unique(of.timeline)
+    if len(names) > MOST_TIMELINES:
         return False
+    timelines = [of.timeline == name for name in names] or [slice(None)]
     audio, capture = (sum(float(np.ptp(time[rows])) for rows in timelines) for time in (media, of.elapsed_ms))
     n = len(media)
     return audio * n / (n - 1) >= SHORTEST_MS - ROUNDING_MS and capture >= SHORTEST_MS * ALIKE

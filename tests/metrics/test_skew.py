@@ -1,6 +1,7 @@
 """Skew of the sender's clock: known skews under jitter, steps, queues and glitches; its line against a slow twin."""
 
 import math
+import tracemalloc
 from dataclasses import replace
 
 import numpy as np
@@ -130,3 +131,13 @@ def test_a_slope_that_no_clock_has_is_no_skew():
     at_ms = np.arange(3000) * 22.0
     growing = Delays(elapsed_ms=at_ms, delay_ms=at_ms - np.arange(3000) * 20.0, timeline=None)
     assert np.isnan(clock_skew(growing).ppm)
+
+
+def test_thousands_of_restarts_cost_no_more_memory_than_their_packets():
+    n = 20_000
+    tracemalloc.start()
+    found = clock_skew(delays(np.arange(n) * 20_000_000, np.arange(n) * 160, np.arange(n) // 4, 8000))
+    peak = tracemalloc.get_traced_memory()[1]
+    tracemalloc.stop()
+    assert np.isnan(found.ppm)
+    assert peak < 100 * n
