@@ -101,10 +101,11 @@ def main(calls: int) -> None:
         memory = peak_anonymous_octets(figures)
         print(f"anonymous memory  {memory / 1e6:7.0f} MB  {(memory - 400e6) / packets:.0f} octets a packet over 400 MB")
 
-        whole = seconds(lambda: rtpaudit.audit(path).write(folder / "report"), times=1)
-        octets = sum(one.stat().st_size for one in (folder / "report" / "audio").iterdir())
-        base = seconds(lambda: read_and_write(path, folder, octets))
-        print(f"with WAV          {whole:7.2f} s  {whole / base:.1f} x reading it and writing {octets / 1e6:.0f} MB")
+        for what, sound in (("with WAV", False), ("and sound measures", True)):
+            whole = seconds(lambda sound=sound: rtpaudit.audit(path, sound=sound).write(folder / "report"), times=1)
+            octets = sum(one.stat().st_size for one in (folder / "report" / "audio").iterdir())
+            base = seconds(lambda octets=octets: read_and_write(path, folder, octets))
+            print(f"{what:18}{whole:7.2f} s  {whole / base:.1f} x reading it and writing {octets / 1e6:.0f} MB")
 
         python = sys.executable
         bare = seconds(command(python, "-c", "import pandas, numba"), times=5)
