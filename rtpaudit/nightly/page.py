@@ -10,7 +10,7 @@ from typing import TYPE_CHECKING, Any
 
 from rtpaudit import __version__
 from rtpaudit.nightly.compare import BASELINE_NIGHTS, Change
-from rtpaudit.nightly.groups import ALL, CODEC, ENDPOINT, HOUR, ROUTE, Group, by_dimension
+from rtpaudit.nightly.groups import ALL, CODEC, DIMENSIONS, ENDPOINT, HOUR, ROUTE, Group, by_dimension
 from rtpaudit.nightly.intervals import FEW_CALLS
 from rtpaudit.nightly.journal import FAILED
 from rtpaudit.nightly.lines import Line, trend_line
@@ -109,8 +109,10 @@ def _limits(morning: Morning) -> list[dict[str, Any]]:
 
 
 def _changes(morning: Morning) -> list[dict[str, Any]]:
-    """Changes beyond noise, what got worse first, then by group."""
-    ordered = sorted(morning.spoken_of, key=lambda one: (not one.worse, one.group.dimension != ALL, one.group.name))
+    """Changes beyond noise: what got worse first, then all calls, routes, codecs, hours, endpoints."""
+    ordered = sorted(
+        morning.spoken_of, key=lambda one: (not one.worse, DIMENSIONS.index(one.group.dimension), one.group.name)
+    )
     return [_change(morning, one) for one in ordered]
 
 

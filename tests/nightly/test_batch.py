@@ -1,14 +1,19 @@
 """A run: what was done is not done again, and one capture's failure stays its own."""
 
+from dataclasses import replace
+from datetime import date
 from pathlib import Path
 
 import pytest
 
+from rtpaudit import walk
 from rtpaudit.nightly.batch import MOST_IN_PIECE
+from rtpaudit.nightly.reading import read_night
 from rtpaudit.nightly.sampling import Sampling
+from rtpaudit.nightly.store import Store
 from rtpaudit.nightly.worker import Piece
-from tests.nightly.made import write_calls
-from tests.nightly.runs import InThisProcess, pending, rows, run
+from tests.nightly.made import START_NS, call_octets, write_calls
+from tests.nightly.runs import SETTINGS, InThisProcess, pending, rows, run
 
 
 def test_a_second_run_has_nothing_to_do(tmp_path: Path) -> None:
@@ -133,3 +138,49 @@ def test_what_a_sample_passed_over_is_audited_when_all_are_asked_for(tmp_path: P
     run(tmp_path / "store", [tmp_path / "in"], sampling=Sampling(share=0.5))
     run(tmp_path / "store", [tmp_path / "in"])
     assert len(rows(tmp_path / "store", "calls")) == 8
+
+
+def test_a_capture_that_grows_while_it_is_read_is_left_for_the_next_run(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    (path,) = write_calls(tmp_path / "in", 1, 1.0)
+    original = walk.audit
+
+    def audit(*paths: object, **given: object) -> object:
+        found = original(*paths, **given)  # type: ignore[arg-type]
+        path.write_bytes(path.read_bytes() + call_octets(9, 1.0)[24:])
+        return found
+
+    monkeypatch.setattr(walk, "audit", audit)
+    progress = run(tmp_path / "store", [tmp_path / "in"])
+    assert (progress.left, progress.calls) == (1, 0)
+    assert rows(tmp_path / "store", "captures") == []
+    monkeypatch.undo()
+    assert run(tmp_path / "store", [tmp_path / "in"]).captures == 1
+    assert len(rows(tmp_path / "store", "captures")) == 1
+
+
+def test_another_profile_audits_anew_and_the_latest_audit_counts(tmp_path: Path) -> None:
+    write_calls(tmp_path / "in", 2, 1.0, loss=0.1)
+    run(tmp_path / "store", [tmp_path / "in"])
+    other = replace(SETTINGS, profile_mark="q", delay_ms=400.0)
+    run(tmp_path / "store", [tmp_path / "in"], InThisProcess(settings=other), other)
+    assert len(rows(tmp_path / "store", "calls")) == 4
+    night = read_night(Store.open(tmp_path / "store"), date(2026, 3, 1))
+    assert night.calls["profile"].tolist() == ["q", "q"]
+    assert len(night.captures) == 2
+    latest = [row["r_factor"] for row in rows(tmp_path / "store", "calls") if row["profile"] == "q"]
+    assert sorted(night.calls["r_factor"]) == sorted(latest)
+
+
+def test_a_capture_over_noon_gives_each_call_to_its_night(tmp_path: Path) -> None:
+    """Two calls in one capture, one before noon of 2 March and one after."""
+    noon_ns = START_NS + 17 * 3_600_000_000_000
+    (tmp_path / "in").mkdir()
+    parts = [call_octets(k, 1.0, start_ns=noon_ns + side * 60_000_000_000) for k, side in enumerate((-1, 1))]
+    (tmp_path / "in" / "a.pcap").write_bytes(parts[0] + parts[1][24:])
+    run(tmp_path / "store", [tmp_path / "in"])
+    store = Store.open(tmp_path / "store")
+    assert [night.isoformat() for night in store.nights()] == ["2026-03-01", "2026-03-02"]
+    assert [len(read_night(store, night).calls) for night in store.nights()] == [1, 1]
+    assert [len(read_night(store, night).streams) for night in store.nights()] == [2, 2]
