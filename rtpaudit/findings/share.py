@@ -70,7 +70,8 @@ def points_of(one: Claim) -> float:
     expected = facts.sequence.expected
     with_it = facts.rated.R(*loss_without(gone, np.zeros(len(gone), np.bool_), expected))
     without_it = facts.rated.R(*loss_without(gone, claimed, expected))
-    return (without_it - with_it) * one.packets / whole
+    # Without single losses those that are left are burstier, which may weigh more: then the cause costs nothing.
+    return max(0.0, without_it - with_it) * one.packets / whole
 
 
 def loss_without(gone: Gone, taken_away: NDArray[np.bool_], expected: int) -> tuple[float, float]:

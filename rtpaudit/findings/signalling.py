@@ -12,10 +12,14 @@ from rtpaudit.findings.agreed import (
     why_nothing_came,
 )
 from rtpaudit.findings.case import Case
+from rtpaudit.findings.facts import StreamFacts
 from rtpaudit.findings.one_way import Unseen, unseen_direction
 from rtpaudit.findings.rule import COMMON_PRACTICE, ENDPOINT, UNKNOWN, Evidence, rule
 from rtpaudit.findings.words import seconds
 from rtpaudit.units import NS_PER_S
+
+LONG_TALKSPURT_S = 10.0
+"""nobody speaks so long without a pause"""
 
 
 @rule(
@@ -113,7 +117,7 @@ def media_late(case: Case, limit: float) -> Iterator[Evidence]:
             continue
         first = min(facts.assessed.started_ns for facts in streams)
         late = (first - answered_ns) / NS_PER_S
-        if late < limit or _held_until(case, first) or _leave_out_silence(case):
+        if late < limit or _held_until(case, first) or _may_leave_out_silence(case, streams):
             continue
         yield Evidence(
             measured=late,
@@ -262,9 +266,13 @@ def _because(reasons: list[str]) -> str:
     return f"; {' and '.join(reasons)}" if reasons else ""
 
 
-def _leave_out_silence(case: Case) -> bool:
-    """Whether senders here say nothing while nobody speaks: then a late packet may be a late word."""
-    return any(suppresses_silence(facts) and not sends_comfort_noise(facts) for facts in case.streams)
+def _may_leave_out_silence(case: Case, streams: list[StreamFacts]) -> bool:
+    """Whether a direction may have sent nothing as nobody spoke: then a late packet may be a late word."""
+    if any(suppresses_silence(facts) and not sends_comfort_noise(facts) for facts in streams):
+        return True
+    # One talkspurt alone shows no pause; what the other side does, both were likely set up to.
+    brief = max(facts.duration_s for facts in streams) < LONG_TALKSPURT_S
+    return brief and any(suppresses_silence(facts) and not sends_comfort_noise(facts) for facts in case.streams)
 
 
 def _held_until(case: Case, time_ns: int) -> bool:
