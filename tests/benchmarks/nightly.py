@@ -1,4 +1,4 @@
-"""Ratios of the nightly audit: ``python -m tests.benchmarks.nightly [CAPTURES]``, and ``… years`` for false alarms.
+"""Ratios of the nightly audit: ``python -m tests.benchmarks.nightly [CAPTURES [SECONDS]]``; ``… years``: false alarms.
 
 Nothing here is asserted: seconds depend on the machine, the ratios much less. Captures hold one 3-minute two-way G.711
 call each, 4 MB; they are made first and count for nothing.
@@ -19,7 +19,8 @@ from tests.nightly.made import write_calls
 from tests.nightly.test_trends import alarms
 from tests.nightly.years import night
 
-PACKETS = 18_000
+PACKETS_A_SECOND = 100
+"""of both ways"""
 
 
 def read_all(folder: Path) -> float:
@@ -77,17 +78,19 @@ def _children_s() -> float:
     return usage.ru_utime + usage.ru_stime
 
 
-def speed(most: int) -> None:
+def speed(most: int, seconds: float) -> None:
     """Captures a second, cost a capture from few to many, memory, and what a run without anything new takes."""
     with tempfile.TemporaryDirectory() as folder:
         place = Path(folder)
         made = 0
-        for count in [one for one in (100, most) if one <= most]:
-            write_calls(place / "in", count - made, 180.0, first=made, loss=0.002)
+        for count in [*(one for one in (100, 1000) if one < most), most]:
+            write_calls(place / "in", count - made, seconds, first=made, loss=0.002)
             made = count
             base = read_all(place / "in")
             taken, used, main, worker = nightly(place, place / "in", f"store-{count}")
-            pace = f"{count / taken:6.1f} captures/s, {count * PACKETS / taken / 1e6:.2f} M packets/s"
+            pace = (
+                f"{count / taken:6.1f} captures/s, {count * PACKETS_A_SECOND * seconds / taken / 1e6:.2f} M packets/s"
+            )
             print(f"{count:6} captures  {taken:7.1f} s  {pace}, {taken / base:.0f} x reading them")
             print(f"{'':15}  {used:7.1f} s  of cores, {1e3 * used / count:.1f} ms a capture")
             print(f"{'':15}  {main / 1e6:7.0f} MB in the run itself, {worker / 1e6:.0f} MB in a worker, at most")
@@ -109,4 +112,4 @@ if __name__ == "__main__":
     if sys.argv[1:] == ["years"]:
         years()
     else:
-        speed(int(sys.argv[1]) if len(sys.argv) > 1 else 1000)
+        speed(int((sys.argv[1:2] or ["1000"])[0]), float((sys.argv[2:3] or ["180"])[0]))
