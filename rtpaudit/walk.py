@@ -156,6 +156,7 @@ def audit(
     near: str | None = None,
     digits: bool = False,
     sound: bool = True,
+    findings: bool = True,
     progress: Progress | None = None,
 ) -> Audit:
     """Audit one capture or several.
@@ -178,6 +179,8 @@ def audit(
         Whether to tell which keys were pressed; they are masked otherwise, as they may be a card number.
     sound : bool
         Whether to decode and measure the sound. Without it the figures of the packets come many times faster.
+    findings : bool
+        Whether to look for causes. Without sound and findings what is left is the figures of the packets.
     progress : callable, optional
         Told how far reading has come.
 
@@ -231,7 +234,7 @@ def audit(
     )
     assessment.calls_in_all = calls_in_all
     source = SoundSource(buffers, assessment.streams, settings.conceals_loss)
-    return Audit(assessment, source, settings, legs, heard, diagnose(assessment, settings))
+    return Audit(assessment, source, settings, legs, heard, diagnose(assessment, settings) if findings else ())
 
 
 def _from(progress: Progress | None, done: int, total: int) -> Callable[[int], None]:

@@ -48,3 +48,10 @@ def test_figures_of_the_packets_are_the_same_without_sound():
     kept = ["packets_lost", "jitter_ms", "burst_ratio", "packets_discarded", "r_factor", "one_way_delay_ms"]
     assert bare.streams[kept].equals(whole.streams[kept])
     assert bare.streams.speech_level_dbov.isna().all()
+
+
+def test_causes_are_not_looked_for_where_only_figures_are_wanted():
+    bare = rtpaudit.audit(CAPTURES / "loss3-random.b.pcap", sound=False, findings=False)
+    assert len(bare.findings) == 0
+    assert bare.calls.headline.isna().all()
+    assert len(rtpaudit.audit(CAPTURES / "loss3-random.b.pcap", sound=False).findings) > 0

@@ -86,7 +86,7 @@ def main(calls: int) -> None:
         print(f"{packets:,} packets, {size / 1e6:.0f} MB")
 
         def figures(capture: Path = path) -> object:
-            return rtpaudit.audit(capture, sound=False).tables
+            return rtpaudit.audit(capture, sound=False, findings=False).tables
 
         rtpaudit.audit(DEMO).tables  # noqa: B018  loads kernels and libraries
         ours = seconds(figures)
@@ -101,8 +101,12 @@ def main(calls: int) -> None:
         memory = peak_anonymous_octets(figures)
         print(f"anonymous memory  {memory / 1e6:7.0f} MB  {(memory - 400e6) / packets:.0f} octets a packet over 400 MB")
 
-        for what, sound in (("with WAV", False), ("and sound measures", True)):
-            whole = seconds(lambda sound=sound: rtpaudit.audit(path, sound=sound).write(folder / "report"), times=1)
+        for what, whole_job in (("with WAV", False), ("whole triage", True)):
+
+            def write(judged: bool = whole_job) -> None:
+                rtpaudit.audit(path, sound=judged, findings=judged).write(folder / "report")
+
+            whole = seconds(write, times=1)
             octets = sum(one.stat().st_size for one in (folder / "report" / "audio").iterdir())
             base = seconds(lambda octets=octets: read_and_write(path, folder, octets))
             print(f"{what:18}{whole:7.2f} s  {whole / base:.1f} x reading it and writing {octets / 1e6:.0f} MB")
