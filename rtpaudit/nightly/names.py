@@ -30,13 +30,18 @@ def hide_names(tables: Mapping[str, DataFrame], names: str, key: bytes, digits: 
         hidden = hidden | Pseudonyms(key, []).tables({name: hidden[name] for name in TREATMENT})
         for frame in hidden.values():
             if "capture" in frame:
-                frame["capture"] = ("capture-" + frame["capture_id"].str[:8]).astype("string")
+                hide_captures(frame)
     elif names != NAMES_KEPT:
         _key(hidden, Pseudonyms(key, []))
     if not digits:
         events = hidden["events"]
         events["digit"] = events["digit"].mask(events["digit"].notna(), "x")
     return hidden
+
+
+def hide_captures(frame: DataFrame) -> None:
+    """Names of captures by their content, as they are often made of who spoke."""
+    frame["capture"] = ("capture-" + frame["capture_id"].str[:8]).astype("string")
 
 
 def hide_in_report(

@@ -11,10 +11,10 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from rtpaudit.nightly.calendar import nights_of
-from rtpaudit.nightly.names import hide_names
+from rtpaudit.nightly.names import hide_captures, hide_names
 from rtpaudit.nightly.routing import Router, Way
 from rtpaudit.nightly.schema import NIGHT, arrow_schema
-from rtpaudit.nightly.settings import AuditSettings
+from rtpaudit.nightly.settings import PRIVATE, AuditSettings
 from rtpaudit.report.tables import Columns, build_frame, table_columns
 
 if TYPE_CHECKING:
@@ -99,6 +99,9 @@ class PieceRows:
             _place_in_nights(tables, self.zone)
             hidden = hide_names(tables, self.settings.names, self.settings.key, self.settings.digits)
         else:
+            # All failed: nothing is known of who spoke.
+            if self.settings.names == PRIVATE:
+                hide_captures(tables["captures"])
             when = tables["captures"]["_when"].to_numpy(np.int64)
             hidden = {"captures": tables["captures"].assign(**{NIGHT: _nights(when, self.zone)})}
         mark = pd.array([self.settings.profile_mark], dtype="string")

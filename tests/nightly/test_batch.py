@@ -10,6 +10,7 @@ from rtpaudit import walk
 from rtpaudit.nightly.batch import MOST_IN_PIECE
 from rtpaudit.nightly.reading import read_night
 from rtpaudit.nightly.sampling import Sampling
+from rtpaudit.nightly.settings import PRIVATE
 from rtpaudit.nightly.store import Store
 from rtpaudit.nightly.worker import Piece
 from tests.nightly.made import START_NS, call_octets, write_calls
@@ -184,3 +185,14 @@ def test_a_capture_over_noon_gives_each_call_to_its_night(tmp_path: Path) -> Non
     assert [night.isoformat() for night in store.nights()] == ["2026-03-01", "2026-03-02"]
     assert [len(read_night(store, night).calls) for night in store.nights()] == [1, 1]
     assert [len(read_night(store, night).streams) for night in store.nights()] == [2, 2]
+
+
+def test_in_private_even_a_capture_that_failed_has_no_name(tmp_path: Path) -> None:
+    (tmp_path / "in").mkdir()
+    (tmp_path / "in" / "01414960123.pcap").write_bytes(bytes.fromhex("d4c3b2a1"))
+    private = replace(SETTINGS, names=PRIVATE)
+    run(tmp_path / "store", [tmp_path / "in"], InThisProcess(settings=private), private)
+    (row,) = rows(tmp_path / "store", "captures")
+    assert row["status"] == "failed"
+    assert row["capture"].startswith("capture-")
+    assert "01414960123" not in str(row) + (tmp_path / "store" / "journal.jsonl").read_text()
