@@ -1,6 +1,7 @@
 """What came out of the earpiece: the sent timeline after the playout buffer, concealment and comfort noise."""
 
 from collections.abc import Sequence
+from itertools import pairwise
 
 import numpy as np
 from numpy.typing import NDArray
@@ -17,6 +18,7 @@ from rtpaudit.playout.timeline import positions
 
 Samples = NDArray[np.int16]
 
+NOISE_AT_ONCE = 1 << 20
 CONCEALED = ("PCMU", "PCMA")
 """encodings whose losses ITU-T G.711 Appendix I conceals; the others are silent where packets are missing"""
 
@@ -39,6 +41,7 @@ def heard_samples(
     playback : Playback or None
         None where every packet is in time.
     sent : int16 array, shape (n,)
+        It is written to: a call of hours has no room for two.
     rows, position : int64 arrays, shape (audio packets,)
         As ``Laid`` has them.
     rate_hz : int
@@ -51,7 +54,7 @@ def heard_samples(
     Returns
     -------
     int16 array, shape (n,)
-        As long as ``sent`` and aligned with it.
+        ``sent`` itself.
     """
     packets = stream.packets
     distinct = np.flatnonzero(~packets.duplicate)
@@ -63,12 +66,12 @@ def heard_samples(
         played[playback.discarded] = False
     sequence, segment = packets.extended[distinct], packets.segment[distinct]
     lost = _stretches(stream, playback, place, sizes, distinct, played[distinct], rate_hz)
-    made = heard(sent, lost, conceals_loss and stream.encoding in CONCEALED and rate_hz == 8000)
+    made = heard(sent, lost, conceals_loss and stream.encoding in CONCEALED and rate_hz == 8000, in_place=True)
     noise = packets.content[distinct] == Content.COMFORT_NOISE
     if noise.any():
         begin, end = noise_stretches(place, sequence, segment, noise, len(sent))
         order = np.lexsort((sequence[noise], segment[noise]))
-        made = _with_noise(made, _noises(stream, distinct[noise][order], buffers), begin, end)
+        _fill_with_noise(made, _noises(stream, distinct[noise][order], buffers), begin, end)
     return made
 
 
@@ -134,11 +137,22 @@ def _noises(stream: Stream, rows: NDArray[np.int64], buffers: Sequence[Octets]) 
     return noises
 
 
-def _with_noise(made: Samples, noises: list[ComfortNoise], begin: NDArray[np.int64], end: NDArray[np.int64]) -> Samples:
-    filled = made.copy()
-    counts = end - begin
-    wave = generate(noises, counts)
-    at = np.concatenate([[0], np.cumsum(counts)])
-    for k in range(len(noises)):
-        filled[begin[k] : end[k]] = wave[at[k] : at[k + 1]]
-    return filled
+def _fill_with_noise(
+    made: Samples, noises: list[ComfortNoise], begin: NDArray[np.int64], end: NDArray[np.int64]
+) -> None:
+    """Comfort noise in its stretches, so much of it at a time as needs little memory."""
+    stretches = zip(noises, begin.tolist(), end.tolist(), strict=True)
+    pieces = [
+        (noise, at, min(at + NOISE_AT_ONCE, last))
+        for noise, first, last in stretches
+        for at in range(first, last, NOISE_AT_ONCE)
+    ]
+    sizes = np.array([last - first for _, first, last in pieces], np.int64)
+    turn = (np.cumsum(sizes) - sizes) // NOISE_AT_ONCE
+    first_of_turn = np.unique(turn, return_index=True)[1].tolist()
+    for seed, (begins, ends) in enumerate(pairwise([*first_of_turn, len(pieces)])):
+        now = pieces[begins:ends]
+        counts = np.array([last - first for _, first, last in now], np.int64)
+        parts = np.split(generate([noise for noise, _, _ in now], counts, seed), np.cumsum(counts)[:-1])
+        for (_, first, last), part in zip(now, parts, strict=True):
+            made[first:last] = part

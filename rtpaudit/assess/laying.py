@@ -7,6 +7,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
+from rtpaudit.assess.long_sound import silence
 from rtpaudit.assess.media_time import common_ticks
 from rtpaudit.assess.playback import channels_of, packet_ticks
 from rtpaudit.assess.restored import before_in_sequence
@@ -121,7 +122,7 @@ def sent_samples(stream: Stream, laid: Laid, buffers: Sequence[Octets]) -> Sampl
     types, buffer, start, length, place = (np.concatenate(columns) for columns in zip(*pieces, strict=True))
     sizes = packet_ticks(stream)[laid.rows] * laid.rate_hz // stream.clock_rate_hz
     total = min(span(laid.position, sizes), LONGEST_TIMELINE_S * laid.rate_hz)
-    timeline = np.zeros(total, np.int16)
+    timeline = silence(total)
     for number in np.flatnonzero(np.bincount(types, minlength=128)).tolist():
         for octets in np.unique(buffer).tolist():
             mine = (types == number) & (buffer == octets)

@@ -7,6 +7,7 @@ from numpy.typing import NDArray
 
 from rtpaudit.assess.ear import heard_samples
 from rtpaudit.assess.laying import LONGEST_TIMELINE_S, Laid, lay_out, sent_samples, silence_reason
+from rtpaudit.assess.long_sound import silence
 from rtpaudit.assess.results import AssessedCall, AssessedStream
 from rtpaudit.capture.frames import Octets
 from rtpaudit.errors import MissingCodec
@@ -71,7 +72,7 @@ class SoundSource:
             for side in sides
         ]
         length = max(at + len(samples) for side in placed for samples, at in side if at < LONGEST_TIMELINE_S * rate)
-        both = np.zeros((min(length, LONGEST_TIMELINE_S * rate), 2), np.int16)
+        both = silence(min(length, LONGEST_TIMELINE_S * rate), 2)
         for column, side in enumerate(placed):
             for samples, at in side:
                 both[at : at + len(samples), column] = samples[: max(0, len(both) - at)]
@@ -113,7 +114,15 @@ def keep_time(samples: Samples, skew_ppm: float) -> Samples:
         first + int(np.argmin(np.abs(samples[first : first + 2 * reach].astype(np.int32))))
         for first in np.maximum(centres - reach, 0).tolist()
     ]
-    return np.delete(samples, quiet) if skew_ppm > 0 else np.insert(samples, quiet, samples[quiet])
+    fast = skew_ppm > 0
+    kept = silence(len(samples) - len(quiet) if fast else len(samples) + len(quiet))
+    at = first = 0
+    for place in quiet:
+        piece = samples[first : place if fast else place + 1]
+        kept[at : at + len(piece)] = piece
+        at, first = at + len(piece), place + fast
+    kept[at:] = samples[first:]
+    return kept
 
 
 def _at_rate(samples: Samples, own_hz: int, wanted_hz: int) -> Samples:

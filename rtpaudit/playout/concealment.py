@@ -66,7 +66,7 @@ def conceal(samples: Samples, lost: NDArray[np.bool_]) -> Samples:
     return conceal_runs(samples, edges[::2], edges[1::2])
 
 
-def conceal_runs(samples: Samples, begin: Positions, end: Positions) -> Samples:
+def conceal_runs(samples: Samples, begin: Positions, end: Positions, in_place: bool = False) -> Samples:
     """``conceal`` where losses begin and end at any sample.
 
     Parameters
@@ -76,6 +76,8 @@ def conceal_runs(samples: Samples, begin: Positions, end: Positions) -> Samples:
     begin, end : int64 array, shape (runs,)
         Lost are the samples ``begin[i]`` to ``end[i] - 1``. Ascending, and with at least a sample received between two
         runs. [samples]
+    in_place : bool
+        Whether ``samples`` itself is written to: a call of hours has no room for two.
 
     Returns
     -------
@@ -86,7 +88,7 @@ def conceal_runs(samples: Samples, begin: Positions, end: Positions) -> Samples:
     Frames of 10 ms are counted from the beginning of each run. The last one may be shorter, and so may be the overlap
     at the end where the next run follows in less than 10 ms.
     """
-    heard = samples.copy()
+    heard = samples if in_place else samples.copy()
     begin, end = np.clip(begin, 0, len(samples)), np.clip(end, 0, len(samples))
     history, quarter, frame, tail = (np.empty(size, np.float32) for size in (HISTORY, QUARTER_MAX, FRAME, FRAME))
     _conceal_runs(heard, begin, end, history, quarter, frame, tail)

@@ -83,7 +83,7 @@ def noise_stretches(
     return begin[noise[order]], end[noise[order]]
 
 
-def heard(sent: Samples, lost: Stretches, conceals: bool) -> Samples:
+def heard(sent: Samples, lost: Stretches, conceals: bool, in_place: bool = False) -> Samples:
     """The timeline with its lost stretches filled.
 
     Parameters
@@ -94,6 +94,8 @@ def heard(sent: Samples, lost: Stretches, conceals: bool) -> Samples:
         As ``lost_stretches`` gives them. What came too late is overwritten.
     conceals : bool
         Conceal by ITU-T G.711 Appendix I (8000 samples a second); else silence.
+    in_place : bool
+        Whether ``sent`` itself is written to: a call of hours has no room for two.
 
     Returns
     -------
@@ -102,11 +104,13 @@ def heard(sent: Samples, lost: Stretches, conceals: bool) -> Samples:
     """
     begin, end = lost
     if conceals:
-        return conceal_runs(sent, begin, end)
+        return conceal_runs(sent, begin, end, in_place)
     edges = np.zeros(len(sent) + 1, np.int8)
     edges[np.clip(begin, 0, len(sent))] += 1
     edges[np.clip(end, 0, len(sent))] -= 1
-    return np.where(np.cumsum(edges[:-1], dtype=np.int8), np.int16(0), sent)
+    made = sent if in_place else sent.copy()
+    made[np.cumsum(edges[:-1], dtype=np.int8) > 0] = 0
+    return made
 
 
 def _joined(begin: Positions, end: Positions) -> Stretches:
