@@ -46,6 +46,11 @@ def _pacing(facts: StreamFacts) -> Pacing | None:
     ordered = timed.row[~facts.strayed[timed.row]]
     delay = facts.delay_of_row[ordered]
     number = facts.packets.extended[ordered]
+    second = max(1, round(1000 / facts.packet_time_ms))
+    whole = len(delay) // second * second
+    # Bunches of two alone make delays half a packet time apart in every second.
+    if whole == 0 or np.median(np.ptp(delay[:whole].reshape(-1, second), axis=1)) < BUNCHED * facts.packet_time_ms:
+        return None
     best: Pacing | None = None
     for size in range(2, LONGEST_BUNCH + 1):
         piece = size * max(4, round(1000 / facts.packet_time_ms / size))
