@@ -7,7 +7,7 @@ timeline; silence descriptors of G.729 (two octets, RFC 3551 4.5.6) are left out
 from collections.abc import Iterator
 from dataclasses import dataclass, field
 from importlib import import_module
-from typing import Any
+from typing import Any, cast
 
 import numpy as np
 from numpy.typing import NDArray
@@ -73,6 +73,8 @@ def _mono(frame: Any) -> Samples:
     values = frame.to_ndarray()
     if not frame.format.is_planar:
         values = values.reshape(-1, len(frame.layout.channels)).T
+    if len(values) == 1 and values.dtype == np.int16:
+        return cast(Samples, values[0])
     if values.dtype.kind == "f":
         values = values * 32767.0
     return np.asarray(np.clip(np.rint(values.mean(axis=0)), -32768, 32767), np.int16)
