@@ -2,6 +2,7 @@
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from itertools import pairwise
 from typing import Any
 
 import numpy as np
@@ -73,7 +74,7 @@ def lay_out(stream: Stream, skew_ppm: float = float("nan")) -> Laid:
     rate = codec_of(stream.encoding).sampling_rate(stream.clock_rate_hz)
     fits = np.zeros(128, np.bool_)
     for number, encoding in stream.encodings.items():
-        fits[number] = _decodes_at(encoding.name, encoding.clock_rate_hz, rate)
+        fits[number] = _decodes(encoding.name)
     chosen = fits[packets.payload_type] & (packets.content == Content.AUDIO) & ~packets.duplicate
     rows = np.flatnonzero(chosen)
     position = positions(
@@ -107,15 +108,19 @@ def _lay_recovered(
     return chosen[inside], place[inside]
 
 
-def _decodes_at(encoding: str, clock_rate_hz: int, rate_hz: int) -> bool:
+def _decodes(encoding: str) -> bool:
     try:
-        return codec_of(encoding).sampling_rate(clock_rate_hz) == rate_hz
+        codec_of(encoding)
     except MissingCodec:
         return False
+    return True
 
 
 def sent_samples(stream: Stream, laid: Laid, buffers: Sequence[Octets]) -> Samples:
-    """What the payloads of a stream say, on its timeline. Raises MissingCodec."""
+    """What the payloads of a stream say, on its timeline. Raises MissingCodec.
+
+    Payload types of another sampling rate than that of most packets are brought to it, the others stay as they are.
+    """
     pieces = [_pieces(stream.packets, laid.rows, laid.position)]
     if stream.recovered is not None:
         pieces.append(_pieces(stream.recovered, laid.recovered, laid.recovered_position))
@@ -124,11 +129,34 @@ def sent_samples(stream: Stream, laid: Laid, buffers: Sequence[Octets]) -> Sampl
     total = min(span(laid.position, sizes), LONGEST_TIMELINE_S * laid.rate_hz)
     timeline = silence(total)
     for number in np.flatnonzero(np.bincount(types, minlength=128)).tolist():
-        for octets in np.unique(buffer).tolist():
-            mine = (types == number) & (buffer == octets)
-            encoding = stream.encodings[number]
-            _lay_onto(timeline, encoding, start[mine], length[mine], place[mine], buffers[octets])
+        mine, encoding = types == number, stream.encodings[number]
+        payloads = Payloads(buffers, buffer[mine], start[mine], length[mine])
+        own_hz = codec_of(encoding.name).sampling_rate(encoding.clock_rate_hz)
+        if own_hz == laid.rate_hz:
+            _lay_onto(timeline, encoding, payloads, place[mine])
+        else:
+            line = silence(total * own_hz // laid.rate_hz)
+            ends = _lay_onto(line, encoding, payloads, place[mine] * own_hz // laid.rate_hz)
+            _bring_over(timeline, at_rate(line, own_hz, laid.rate_hz), place[mine], ends * laid.rate_hz // own_hz)
     return timeline
+
+
+@dataclass(frozen=True, slots=True)
+class Payloads:
+    """Payloads of one encoding, wherever they lie. Columns of shape (n,)."""
+
+    buffers: Sequence[Octets]
+    buffer: NDArray[np.uint16]
+    start: NDArray[np.int64]
+    length: NDArray[np.int32]
+
+    def gathered(self, order: NDArray[np.int64]) -> tuple[Octets, NDArray[np.int64]]:
+        """Their octets one after the other, and where each begins."""
+        buffer, start, length = self.buffer[order], self.start[order], self.length[order]
+        edges = [0, *(np.flatnonzero(np.diff(buffer)) + 1).tolist(), len(buffer)]
+        runs = [gather(self.buffers[buffer[a]], start[a:b], length[a:b]) for a, b in pairwise(edges)]
+        held = np.concatenate([np.zeros(1, np.int64), *(np.diff(offsets) for _, offsets in runs)])
+        return np.concatenate([octets for octets, _ in runs]), np.cumsum(held)
 
 
 def _pieces(packets: StreamPackets, rows: NDArray[np.int64], position: NDArray[np.int64]) -> tuple[NDArray[Any], ...]:
@@ -136,27 +164,44 @@ def _pieces(packets: StreamPackets, rows: NDArray[np.int64], position: NDArray[n
     return packets.payload_type[rows], packets.buffer[rows], packets.start[rows], packets.captured[rows], position
 
 
-def _lay_onto(
-    timeline: Samples,
-    encoding: Encoding,
-    start: NDArray[np.int64],
-    length: NDArray[np.int32],
-    place: NDArray[np.int64],
-    octets: Octets,
-) -> None:
+def _lay_onto(timeline: Samples, encoding: Encoding, payloads: Payloads, place: NDArray[np.int64]) -> NDArray[np.int64]:
+    """Lay what payloads of one encoding say onto the timeline at its own rate; samples that each of them holds."""
     table, channels = sample_table(encoding.name), channels_of(encoding)
     if table is not None and channels == 1:
-        lay_by_table(table, octets, start, length, place, len(timeline), onto=timeline)
-        return
-    # Decoders that remember the past need the order of media time.
+        for number in np.unique(payloads.buffer).tolist():
+            mine = payloads.buffer == number
+            octets, start, length = payloads.buffers[number], payloads.start[mine], payloads.length[mine]
+            lay_by_table(table, octets, start, length, place[mine], len(timeline), onto=timeline)
+        return payloads.length.astype(np.int64)
+    # Decoders that remember the past need the order of media time, also from one file of a ring to the next.
     order = np.argsort(place, kind="stable")
-    payloads, offsets = gather(octets, start[order], length[order])
-    samples, ends = decode(encoding.name, payloads, offsets)
+    samples, ends = decode(encoding.name, *payloads.gathered(order))
     if channels > 1:
         samples, ends = _mixed(samples, ends, channels)
-    laid = lay(samples, ends, place[order], len(timeline))
-    held = laid != 0
-    timeline[held] = laid[held]
+    lay(samples, ends, place[order], len(timeline), onto=timeline)
+    held = np.empty(len(order), np.int64)
+    held[order] = np.diff(ends)
+    return held
+
+
+def _bring_over(timeline: Samples, other: Samples, place: NDArray[np.int64], held: NDArray[np.int64]) -> None:
+    """Take the stretches of some packets from another timeline: its filter rings on into their neighbours."""
+    length = min(len(timeline), len(other))
+    edges = np.zeros(length + 1, np.int32)
+    np.add.at(edges, np.clip(place, 0, length), 1)
+    np.add.at(edges, np.clip(place + held, 0, length), -1)
+    mine = np.cumsum(edges[:-1]) > 0
+    timeline[:length][mine] = other[:length][mine]
+
+
+def at_rate(samples: Samples, own_hz: int, wanted_hz: int) -> Samples:
+    """The same sound at another sampling rate."""
+    if own_hz == wanted_hz or len(samples) == 0:
+        return samples
+    from scipy.signal import resample_poly
+
+    raised = resample_poly(samples.astype(np.float32), wanted_hz, own_hz)
+    return np.asarray(np.clip(np.rint(raised), -32768, 32767), np.int16)
 
 
 def _mixed(samples: Samples, ends: NDArray[np.int64], channels: int) -> tuple[Samples, NDArray[np.int64]]:

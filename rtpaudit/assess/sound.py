@@ -6,7 +6,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from rtpaudit.assess.ear import heard_samples
-from rtpaudit.assess.laying import LONGEST_TIMELINE_S, Laid, lay_out, sent_samples, silence_reason
+from rtpaudit.assess.laying import LONGEST_TIMELINE_S, Laid, at_rate, lay_out, sent_samples, silence_reason
 from rtpaudit.assess.long_sound import silence
 from rtpaudit.assess.results import AssessedCall, AssessedStream
 from rtpaudit.capture.frames import Octets
@@ -68,7 +68,7 @@ class SoundSource:
         rate = max(part[1] for part in parts)
         origin = min(part[2] for part in parts)
         placed = [
-            [(_at_rate(samples, own, rate), round((at - origin) * rate / NS_PER_S)) for samples, own, at in side]
+            [(at_rate(samples, own, rate), round((at - origin) * rate / NS_PER_S)) for samples, own, at in side]
             for side in sides
         ]
         length = max(at + len(samples) for side in placed for samples, at in side if at < LONGEST_TIMELINE_S * rate)
@@ -123,12 +123,3 @@ def keep_time(samples: Samples, skew_ppm: float) -> Samples:
         at, first = at + len(piece), place + fast
     kept[at:] = samples[first:]
     return kept
-
-
-def _at_rate(samples: Samples, own_hz: int, wanted_hz: int) -> Samples:
-    if own_hz == wanted_hz or len(samples) == 0:
-        return samples
-    from scipy.signal import resample_poly
-
-    raised = resample_poly(samples.astype(np.float32), wanted_hz, own_hz)
-    return np.asarray(np.clip(np.rint(raised), -32768, 32767), np.int16)

@@ -53,7 +53,7 @@ def gather(octets: Octets, start: NDArray[np.int64], length: NDArray[np.int32]) 
     return payloads, offsets
 
 
-def lay(samples: Samples, offsets: Positions, position: Positions, total: int) -> Samples:
+def lay(samples: Samples, offsets: Positions, position: Positions, total: int, onto: Samples | None = None) -> Samples:
     """Samples of each packet at their place on the timeline, silence elsewhere.
 
     Parameters
@@ -65,13 +65,15 @@ def lay(samples: Samples, offsets: Positions, position: Positions, total: int) -
         First sample of each packet on the timeline. What would lie outside it is left out.
     total : int
         Length of the timeline. [samples]
+    onto : int16 array, shape (total,), optional
+        The timeline to go on with. It is written to.
 
     Returns
     -------
     int16 array, shape (total,)
         Where packets overlap the later in the arguments stays.
     """
-    timeline = np.zeros(total, np.int16)
+    timeline = np.zeros(total, np.int16) if onto is None else onto
     _lay(np.ascontiguousarray(samples), offsets, position, timeline)
     return timeline
 
