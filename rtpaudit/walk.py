@@ -120,7 +120,7 @@ class Audit:
         """
         if stream not in {one.id for one in self.assessment.streams}:
             raise UnusableArguments(f"there is no stream {stream!r}")
-        return (self.sound.heard(stream) if heard else self.sound.sent(stream))[0]
+        return (self.sound.heard(stream) if heard else self.sound.sent(stream))[0].copy()
 
     def write(
         self,

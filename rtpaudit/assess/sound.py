@@ -1,6 +1,6 @@
 """The sound of streams and calls: payloads decoded and laid on the RTP timeline, directions laid side by side."""
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 
 import numpy as np
 from numpy.typing import NDArray
@@ -16,8 +16,12 @@ from rtpaudit.units import NS_PER_S
 Samples = NDArray[np.int16]
 
 
+KEPT, LARGEST_KEPT = 6, 8_000_000
+"""sounds that are kept for the next question, and samples that one may have: a call is asked for piece by piece"""
+
+
 class SoundSource:
-    """Decoded audio of one audit's streams, made when it is asked for and never kept."""
+    """Decoded audio of one audit's streams, made when it is asked for; the latest few are kept."""
 
     def __init__(
         self, buffers: Sequence[Sequence[Octets]], streams: Sequence[AssessedStream], conceals_loss: bool = True
@@ -25,6 +29,17 @@ class SoundSource:
         self.buffers = buffers
         self._conceals_loss = conceals_loss
         self._streams = {one.id: one for one in streams}
+        self._recent: dict[tuple[str, str], Samples] = {}
+
+    def _kept(self, what: str, stream_id: str, make: Callable[[], Samples]) -> Samples:
+        found = self._recent.get((what, stream_id))
+        if found is None:
+            found = make()
+            if len(found) <= LARGEST_KEPT:
+                self._recent[what, stream_id] = found
+                if len(self._recent) > KEPT:
+                    del self._recent[next(iter(self._recent))]
+        return found
 
     def why_silent(self, stream_id: str) -> str:
         """Reason why a stream has no audio, "" where it has."""
@@ -33,9 +48,9 @@ class SoundSource:
 
     def sent(self, stream_id: str) -> tuple[Samples, int]:
         """Every received payload on the RTP timeline, silence where lost; and the sampling rate. MissingCodec."""
-        stream = self._streams[stream_id].stream
-        laid = lay_out(stream)
-        return sent_samples(stream, laid, self.buffers[stream.recording]), laid.rate_hz
+        one = self._streams[stream_id]
+        laid = lay_out(one.stream)
+        return self._sent(one, laid), laid.rate_hz
 
     def heard(self, stream_id: str) -> tuple[Samples, int]:
         """The same after the playout buffer and concealment, as long as sent. MissingCodec."""
@@ -43,9 +58,14 @@ class SoundSource:
         laid = lay_out(one.stream)
         return self._heard(one, laid), laid.rate_hz
 
+    def _sent(self, one: AssessedStream, laid: Laid) -> Samples:
+        return self._kept("sent", one.id, lambda: sent_samples(one.stream, laid, self.buffers[one.stream.recording]))
+
     def _heard(self, one: AssessedStream, laid: Laid) -> Samples:
-        buffers = self.buffers[one.stream.recording]
-        sent = sent_samples(one.stream, laid, buffers)
+        return self._kept("heard", one.id, lambda: self._after_playout(one, laid))
+
+    def _after_playout(self, one: AssessedStream, laid: Laid) -> Samples:
+        sent, buffers = self._sent(one, laid), self.buffers[one.stream.recording]
         return heard_samples(
             one.stream, one.playback, sent, laid.rows, laid.position, laid.rate_hz, buffers, self._conceals_loss
         )
