@@ -73,7 +73,7 @@ def robbed_bits(case: Case, limit: float) -> Iterator[Evidence]:
 
 
 @rule(
-    "clock-slips", group="sound", limit=4, unit="slips", basis="ITU-T G.822, from an encyclopaedia",
+    "clock-slips", group="sound", limit=2, unit="slips", basis="ITU-T G.822, from an encyclopaedia",
     means="Samples are repeated or dropped at intervals, heard as clicks: two devices on the way run on clocks of "
     "their own.",
     measured_as="places at which the sound repeats or skips samples, and the interval between them",

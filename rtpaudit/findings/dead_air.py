@@ -118,7 +118,8 @@ def _mute_passages(sound: StreamSound, least_s: float) -> list[tuple[float, floa
 
 def _dead_together(case: Case, sound: CallSound, least_s: float) -> list[tuple[float, float]]:
     """Begin and end of passages of the talk in which neither side had any sound though packets came. [s]"""
-    if any(is_cut(facts) or keeps_no_time(facts) for facts in case.streams):
+    # The sound of a call is that of the longest stream either way: what others said is not in it.
+    if any(is_cut(facts) or keeps_no_time(facts) for facts in case.streams) or max(map(len, case.directions)) > 1:
         return []
     answered = case.call.started_ns if case.call.answered_ns is None else case.call.answered_ns
     found = []

@@ -102,10 +102,23 @@ def wrong_steps(facts: StreamFacts) -> WrongSteps:
     pause = (step_ms > usual) & (np.abs(step_ms - passed_ms) < 100.0 + usual)
     odd = ~whole & ~pause
     off = np.where(odd, step_ms - passed_ms, 0.0)
-    lasting = [one for one in lasting_steps(np.cumsum(off), 100.0, LASTING_PACKETS)] if odd.any() else []
+    lasting = lasting_steps(np.cumsum(off), 100.0, LASTING_PACKETS) if odd.any() else []
+    # A packet that was only held up on its way does not move those that follow.
+    at = np.flatnonzero(both)
+    lasting = [one for one in lasting if _moves_the_delay(facts, int(at[one.at]), one.height)]
     return WrongSteps(
         int(odd.sum()), int(both.sum()), len(lasting), max((abs(one.height) for one in lasting), default=0.0)
     )
+
+
+def _moves_the_delay(facts: StreamFacts, place: int, jump_ms: float) -> bool:
+    """Whether delays beside a packet of the sequence step down by about as much as timestamps jump ahead."""
+    delay = facts.delay_of_row[facts.sequence.order]
+    before, after = delay[max(0, place - LASTING_PACKETS) : place + 1], delay[place + 1 : place + 1 + LASTING_PACKETS]
+    before, after = before[~np.isnan(before)], after[~np.isnan(after)]
+    if not len(before) or not len(after):
+        return False
+    return bool(abs(np.median(after) - np.median(before) + jump_ms) < 0.5 * abs(jump_ms))
 
 
 def keeps_no_time(facts: StreamFacts) -> bool:

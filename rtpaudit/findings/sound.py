@@ -24,6 +24,8 @@ FAR_BELOW_DB = 28.0
 """noise that far below the speech is turned down with it (common practice)"""
 FLAT_NOISE_DB = 2.5
 """by which the weighting of a telephone lowers flat noise. ITU-T O.41, from memory"""
+SURE_ECHO_PCT, INAUDIBLE_ECHO_DB = 70.0, 46.0
+"""loss that an echo canceller leaves at least. ITU-T G.168, from memory"""
 SURE_PCT = 60.0
 FLOOR_TENTHS, FLOOR_SHARES, FLOOR_RATIO = 50, (3.0, 15.0), 10.0**0.4
 """tenths of a second, percentiles of their power, and what lies between these at most where there is noise below"""
@@ -213,7 +215,7 @@ def echo(case: Case, limit: float) -> Iterator[Evidence]:
         ("caller", sound.echo_to_caller, case.from_callee),
         ("callee", sound.echo_to_callee, case.from_caller),
     ):
-        if found is None or found.confidence_pct < SURE_PCT or found.delay_ms < limit or not streams:
+        if found is None or found.delay_ms < limit or not streams or not _is_heard(found):
             continue
         facts = max(streams, key=lambda one: len(one.packets))
         points = _echo_points(facts, found)
@@ -271,6 +273,11 @@ def _noise_points(facts: StreamFacts, level_dbov: float) -> float:
     quiet = facts.profile.planning
     delay = facts.rated.delay_ms
     return float(rating(quiet, Ta=delay).R - rating(replace(quiet, Nc=max(Nc, quiet.Nc)), Ta=delay).R)
+
+
+def _is_heard(found: Echo) -> bool:
+    """Whether an echo is sure, and loud enough to be one that somebody complains of."""
+    return found.confidence_pct >= SURE_ECHO_PCT and found.loss_db < INAUDIBLE_ECHO_DB
 
 
 def _echo_points(facts: StreamFacts, found: Echo) -> float:

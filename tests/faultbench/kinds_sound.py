@@ -16,10 +16,10 @@ G711 = ("PCMU", "PCMA")
 @kind("level-low")
 def level_low(plan: Plan) -> None:
     draw = plan.draw
-    level = float(draw.uniform(-46, -41))
+    level = float(draw.uniform(-52, -46))
     for leg in plan.legs:
         leg.level_dbov = level + float(draw.uniform(-2, 2))
-        leg.noise_dbov = float(draw.uniform(-78, -72))
+        leg.noise_dbov = float(draw.uniform(-82, -76))
 
 
 @kind("level-high")
